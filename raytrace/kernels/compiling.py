@@ -1,0 +1,88 @@
+"""One decorator, `kernel`, that compiles a function with numba and keeps the machine code in a folder of our own.
+
+The folder's name carries a hash of every kernel source beside the function, of numba, llvmlite, numpy and the processor,
+because numba's own index does not notice an edit to a helper in another file and would return old numbers.
+The caller's own numba cache settings are left as they were found.
+"""
+
+from __future__ import annotations
+
+import hashlib
+import os
+import sys
+import tempfile
+from collections.abc import Callable
+from functools import cache
+from pathlib import Path
+from typing import Any
+
+import llvmlite
+import llvmlite.binding
+import numba
+import numpy as np
+
+# "contract" (fused multiply-add), "arcp" and "nsz" change last digits only; full fast-math would assume that no value is
+# NaN or infinite and remove the guards that a ray at the horizon needs.
+FAST_MATH = {"contract", "arcp", "nsz"}
+
+
+@cache
+def _cache_folder(sources: Path) -> str:
+    digest = hashlib.sha256()
+    for folder in sorted({sources, Path(__file__).parent}):
+        for path in sorted(folder.glob("*.py")):
+            digest.update(path.name.encode() + path.read_bytes())
+    versions = (numba.__version__, llvmlite.__version__, np.__version__, sys.version)
+    digest.update(repr((*versions, llvmlite.binding.get_host_cpu_name())).encode())
+    return str(_writable_base() / f"{sources.parent.name}-{digest.hexdigest()[:16]}")
+
+
+@cache
+def _writable_base() -> Path:
+    in_environment = sys.prefix != sys.base_prefix
+    home = Path(os.environ.get("XDG_CACHE_HOME") or Path("~/.cache").expanduser())
+    for base in ([Path(sys.prefix, "var", "cache")] if in_environment else []) + [home]:
+        folder = base / "ringwright-kernels"
+        try:
+            folder.mkdir(parents=True, exist_ok=True)
+        except OSError:
+            continue
+        if os.access(folder, os.W_OK):
+            return folder
+    temporary = Path(tempfile.mkdtemp(prefix="ringwright-kernels-"))
+    print(f"ringwright: no writable cache folder; compiled kernels go to {temporary} for now", file=sys.stderr)
+    return temporary
+
+
+def kernel(
+    *, parallel: bool = False, inline: bool = False, strict: bool = False
+) -> Callable[[Callable[..., Any]], Any]:
+    """Compile a function with the project's one set of numba options.
+
+    Parameters
+    ----------
+    parallel : bool
+        Spread `numba.prange` loops over the cores that numba was given.
+    inline : bool
+        Inline the function into its callers at the level of numba's own representation.
+    strict : bool
+        No fast-math flag at all: for error-free sums and products, which a reordering would break.
+    """
+
+    def compile_(function: Callable[..., Any]) -> Any:
+        before = numba.config.CACHE_DIR
+        numba.config.CACHE_DIR = _cache_folder(Path(function.__code__.co_filename).resolve().parent)
+        try:
+            return numba.njit(
+                function,
+                cache=True,
+                parallel=parallel,
+                nogil=True,
+                error_model="numpy",
+                fastmath=False if strict else FAST_MATH,
+                inline="always" if inline else "never",
+            )
+        finally:
+            numba.config.CACHE_DIR = before
+
+    return compile_

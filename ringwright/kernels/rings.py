@@ -1,0 +1,398 @@
+"""Kernels of the ring estimator: sampling a smooth image along rays, peaks, the centre, widths, moments.
+
+Cubic B-splines (Unser 1999, IEEE Signal Processing Magazine 16, 22) on the coefficients that
+ring/smoothing.py makes; the ring's definitions are steps 2 to 6 of the estimator in docs/measuring.md.
+Lengths are in samples of the coefficient grid, angles are position angles, so a ray steps (drow, dcol) =
+(cos, -sin): row grows to the north, column to the west.
+"""
+
+from __future__ import annotations
+
+import math
+from typing import Any
+
+import numpy as np
+
+from raytrace.kernels.compiling import kernel
+
+# A sample a quarter of the FWHM apart misses at most (1/8)²·4 ln2 = 4.3 % of a peak: every local maximum
+# within 10 % of the highest sample is refined before the highest peak is named.
+CONTENDER = 0.90
+NEWTON_STEPS = 12
+NEWTON_TOLERANCE = 1e-11  # [samples]; far below any reading, so that machines agree
+BISECTIONS = 36
+# Trial centres: the flux centroid, 6 at half and 12 at the whole of the allowed distance, each judged on
+# every fifth ray.
+COARSE_STRIDE = 5
+HARMONIC_STEPS = 6
+HARMONIC_DONE = 0.01  # of the mean radius: near enough for Gauss-Newton
+# Gauss-Newton on the peak radii polishes the centre; its slopes are differences over this share of the mean
+# radius.
+DIFFERENCE = 1e-4
+POLISHES = 5
+CENTRE_TOLERANCE = 1e-6  # [mean radius]; moves a diameter by less than that times the scatter
+HALVINGS = 4
+RING_RADII = 16  # radii between the two edges of the ring for the azimuthal moments
+DISK_RADII = 6  # equal-area annuli of the central disk
+
+
+@kernel()
+def value(coef: Any, row: float, col: float) -> float:
+    """The spline at one point; nothing shines outside the grid."""
+    i = math.floor(row)
+    j = math.floor(col)
+    if i < 1 or j < 1 or i > coef.shape[0] - 3 or j > coef.shape[1] - 3:
+        return 0.0
+    u = row - i
+    v = col - j
+    a0 = (1.0 - u) ** 3
+    a1 = (3.0 * u - 6.0) * u * u + 4.0
+    a3 = u * u * u
+    a2 = 6.0 - a0 - a1 - a3
+    b0 = (1.0 - v) ** 3
+    b1 = (3.0 * v - 6.0) * v * v + 4.0
+    b3 = v * v * v
+    b2 = 6.0 - b0 - b1 - b3
+    j0 = j - 1
+    s0 = b0 * coef[i - 1, j0] + b1 * coef[i - 1, j] + b2 * coef[i - 1, j + 1] + b3 * coef[i - 1, j + 2]
+    s1 = b0 * coef[i, j0] + b1 * coef[i, j] + b2 * coef[i, j + 1] + b3 * coef[i, j + 2]
+    s2 = b0 * coef[i + 1, j0] + b1 * coef[i + 1, j] + b2 * coef[i + 1, j + 1] + b3 * coef[i + 1, j + 2]
+    s3 = b0 * coef[i + 2, j0] + b1 * coef[i + 2, j] + b2 * coef[i + 2, j + 1] + b3 * coef[i + 2, j + 2]
+    return (a0 * s0 + a1 * s1 + a2 * s2 + a3 * s3) / 36.0
+
+
+@kernel()
+def bend(coef: Any, row: float, col: float, drow: float, dcol: float) -> tuple[float, float]:
+    """First and second derivative of the spline along the direction (drow, dcol)."""
+    i = math.floor(row)
+    j = math.floor(col)
+    if i < 1 or j < 1 or i > coef.shape[0] - 3 or j > coef.shape[1] - 3:
+        return 0.0, 0.0
+    u = row - i
+    v = col - j
+    a = ((1.0 - u) ** 3, (3.0 * u - 6.0) * u * u + 4.0, (3.0 - 3.0 * u) * u * u + 3.0 * u + 1.0, u**3)
+    b = ((1.0 - v) ** 3, (3.0 * v - 6.0) * v * v + 4.0, (3.0 - 3.0 * v) * v * v + 3.0 * v + 1.0, v**3)
+    a1 = (-3.0 * (1.0 - u) ** 2, (9.0 * u - 12.0) * u, (6.0 - 9.0 * u) * u + 3.0, 3.0 * u * u)
+    b1 = (-3.0 * (1.0 - v) ** 2, (9.0 * v - 12.0) * v, (6.0 - 9.0 * v) * v + 3.0, 3.0 * v * v)
+    a2 = (6.0 - 6.0 * u, 18.0 * u - 12.0, 6.0 - 18.0 * u, 6.0 * u)
+    b2 = (6.0 - 6.0 * v, 18.0 * v - 12.0, 6.0 - 18.0 * v, 6.0 * v)
+    first = 0.0
+    second = 0.0
+    for m in range(4):
+        flat = 0.0
+        slope = 0.0
+        curve = 0.0
+        for n in range(4):
+            c = coef[i - 1 + m, j - 1 + n]
+            flat += b[n] * c
+            slope += b1[n] * c
+            curve += b2[n] * c
+        first += drow * a1[m] * flat + dcol * a[m] * slope
+        second += drow * drow * a2[m] * flat + 2.0 * drow * dcol * a1[m] * slope + dcol * dcol * a[m] * curve
+    return first / 36.0, second / 36.0
+
+
+@kernel()
+def climb(
+    coef: Any, row: float, col: float, drow: float, dcol: float, low: float, high: float, r: float
+) -> float:
+    """Radius of the maximum between `low` and `high`: Newton's method inside a shrinking bracket."""
+    for _ in range(NEWTON_STEPS):
+        first, second = bend(coef, row + r * drow, col + r * dcol, drow, dcol)
+        if first > 0.0:
+            low = r
+        else:
+            high = r
+        step = -first / second if second < 0.0 else math.inf
+        if abs(step) < NEWTON_TOLERANCE:
+            return r + step
+        if not (low < r + step < high):
+            step = 0.5 * (low + high) - r
+        r += step
+    return r
+
+
+@kernel()
+def find_peak(
+    coef: Any, row: float, col: float, drow: float, dcol: float, start: float, stop: float, samples: Any
+) -> tuple[float, float, bool]:
+    """The highest peak of one ray: its radius, its height, and whether it is a limit of the search."""
+    count = samples.size
+    step = (stop - start) / (count - 1)
+    highest = 0.0
+    for k in range(count):
+        r = start + k * step
+        samples[k] = value(coef, row + r * drow, col + r * dcol)
+        highest = max(highest, samples[k])
+    radius = start
+    peak = samples[0]
+    at_limit = True
+    if samples[count - 1] > peak:
+        radius = stop
+        peak = samples[count - 1]
+    for k in range(1, count - 1):
+        here = samples[k]
+        if here <= 0.0 or here < CONTENDER * highest or here < samples[k - 1] or here <= samples[k + 1]:
+            continue
+        r = start + k * step
+        r = climb(coef, row, col, drow, dcol, r - step, r + step, r)
+        height = value(coef, row + r * drow, col + r * dcol)
+        if height > peak:
+            radius, peak, at_limit = r, height, False
+    return radius, peak, at_limit
+
+
+@kernel()
+def peaks_around(
+    coef: Any,
+    row: float,
+    col: float,
+    turn: Any,
+    stride: int,
+    start: float,
+    stop: float,
+    samples: Any,
+    radius: Any,
+    height: Any,
+) -> int:
+    """Peaks along every `stride`-th ray of `turn` (2, rays) = (cos, -sin); returns how many are limits."""
+    limits = 0
+    for k in range(0, turn.shape[1], stride):
+        r, h, at_limit = find_peak(coef, row, col, turn[0, k], turn[1, k], start, stop, samples)
+        radius[k // stride] = r
+        height[k // stride] = h
+        limits += at_limit
+    return limits
+
+
+@kernel()
+def dispersion(radius: Any) -> tuple[float, float]:
+    """Mean radius, and variance over squared mean, of the peaks around a trial centre."""
+    mean = radius.mean()
+    return mean, ((radius - mean) ** 2).mean() / (mean * mean)
+
+
+@kernel()
+def follow(
+    coef: Any,
+    row: float,
+    col: float,
+    turn: Any,
+    ridge: Any,
+    by_row: float,
+    by_col: float,
+    reach: float,
+    out: Any,
+) -> float:
+    """Dispersion about a centre moved by a little; every peak is followed from where it was."""
+    for k in range(ridge.size):
+        drow = turn[0, k]
+        dcol = turn[1, k]
+        guess = ridge[k] - by_row * drow - by_col * dcol
+        out[k] = climb(coef, row + by_row, col + by_col, drow, dcol, guess - reach, guess + reach, guess)
+    return dispersion(out)[1]
+
+
+@kernel()
+def polish(
+    coef: Any, row: float, col: float, turn: Any, ridge: Any, size: float, reach: float
+) -> tuple[float, float]:
+    """One Gauss-Newton step toward the least dispersion; the slopes are differences over `size`."""
+    moved = np.empty((3, ridge.size))
+    least = follow(coef, row, col, turn, ridge, 0.0, 0.0, reach, moved[0])
+    follow(coef, row, col, turn, ridge, size, 0.0, reach, moved[1])
+    follow(coef, row, col, turn, ridge, 0.0, size, reach, moved[2])
+    for m in range(3):
+        moved[m] /= moved[m].mean()
+    moved[1] -= moved[0]
+    moved[2] -= moved[0]
+    moved[0] -= 1.0
+    h00 = (moved[1] * moved[1]).sum()
+    h11 = (moved[2] * moved[2]).sum()
+    h01 = (moved[1] * moved[2]).sum()
+    g0 = (moved[1] * moved[0]).sum()
+    g1 = (moved[2] * moved[0]).sum()
+    determinant = h00 * h11 - h01 * h01
+    if not determinant > 0.0:
+        return 0.0, 0.0
+    by_row = size * (h01 * g1 - h11 * g0) / determinant
+    by_col = size * (h01 * g0 - h00 * g1) / determinant
+    for _ in range(HALVINGS):
+        if follow(coef, row, col, turn, ridge, by_row, by_col, reach, moved[0]) < least:
+            return by_row, by_col
+        by_row *= 0.5
+        by_col *= 0.5
+    return 0.0, 0.0
+
+
+@kernel()
+def _within(row: float, col: float, about_row: float, about_col: float, reach: float) -> tuple[float, float]:
+    away = math.hypot(row - about_row, col - about_col)
+    if away <= reach:
+        return row, col
+    return about_row + (row - about_row) * reach / away, about_col + (col - about_col) * reach / away
+
+
+@kernel()
+def scout_centre(
+    coef: Any,
+    about_row: float,
+    about_col: float,
+    reach: float,
+    turn: Any,
+    start: float,
+    stop: float,
+    samples: Any,
+) -> tuple[float, float]:
+    """The best of 19 trial centres within `reach` of a point."""
+    few = np.empty((2, (turn.shape[1] + COARSE_STRIDE - 1) // COARSE_STRIDE))
+    best = math.inf
+    best_row = about_row
+    best_col = about_col
+    for trial in range(19):
+        away = 0.0 if trial == 0 else (0.5 if trial < 7 else 1.0) * reach
+        angle = (trial - 1) * math.pi / (3.0 if trial < 7 else 6.0)
+        row = about_row + away * math.cos(angle)
+        col = about_col - away * math.sin(angle)
+        peaks_around(coef, row, col, turn, COARSE_STRIDE, start, stop, samples, few[0], few[1])
+        spread = dispersion(few[0])[1]
+        if spread < best * (1.0 - 1e-9):  # a tie keeps the earlier one, on every machine
+            best, best_row, best_col = spread, row, col
+    return best_row, best_col
+
+
+@kernel()
+def find_centre(
+    coef: Any,
+    about_row: float,
+    about_col: float,
+    allowed: float,
+    turn: Any,
+    start: float,
+    stop: float,
+    samples: Any,
+    radius: Any,
+    height: Any,
+) -> tuple[float, float]:
+    """Where the dispersion of the peak radius is least, within `allowed` of a point.
+
+    A scouting grid, then steps along the first harmonic of the peak radius (exact for a circle), then
+    Gauss-Newton.
+    """
+    row, col = scout_centre(coef, about_row, about_col, allowed, turn, start, stop, samples)
+    peaks_around(coef, row, col, turn, 1, start, stop, samples, radius, height)
+    mean, least = dispersion(radius)
+    for _ in range(HARMONIC_STEPS):
+        step_row = 2.0 * (radius * turn[0]).mean()
+        step_col = 2.0 * (radius * turn[1]).mean()
+        new_row, new_col = _within(row + step_row, col + step_col, about_row, about_col, allowed)
+        peaks_around(coef, new_row, new_col, turn, 1, start, stop, samples, radius, height)
+        mean, spread = dispersion(radius)
+        if spread >= least:
+            break
+        moved = math.hypot(new_row - row, new_col - col)
+        row, col, least = new_row, new_col, spread
+        if moved < HARMONIC_DONE * mean:
+            break
+    reach = (stop - start) / (samples.size - 1)
+    for _ in range(POLISHES):
+        peaks_around(coef, row, col, turn, 1, start, stop, samples, radius, height)
+        mean, least = dispersion(radius)
+        by_row, by_col = polish(coef, row, col, turn, radius, DIFFERENCE * mean, reach)
+        row, col = _within(row + by_row, col + by_col, about_row, about_col, allowed)
+        if math.hypot(by_row, by_col) < CENTRE_TOLERANCE * mean:
+            break
+    return row, col
+
+
+@kernel()
+def crossing(
+    coef: Any,
+    row: float,
+    col: float,
+    drow: float,
+    dcol: float,
+    peak: float,
+    end: float,
+    step: float,
+    level: float,
+) -> float:
+    """Radius where a ray first falls to `level` between its peak and `end`; NaN where it never does."""
+    count = max(1, math.ceil(abs(end - peak) / step))
+    before = peak
+    for k in range(1, count + 1):
+        r = peak + (end - peak) * k / count
+        if value(coef, row + r * drow, col + r * dcol) <= level:
+            for _ in range(BISECTIONS):
+                middle = 0.5 * (before + r)
+                if value(coef, row + middle * drow, col + middle * dcol) <= level:
+                    r = middle
+                else:
+                    before = middle
+            return 0.5 * (before + r)
+        before = r
+    return math.nan
+
+
+@kernel()
+def mean_width(
+    coef: Any, row: float, col: float, turn: Any, radius: Any, height: Any, outer: float, step: float
+) -> tuple[float, int]:
+    """Mean FWHM above the mean floor at `outer`, and how many rays never fall to half on a side."""
+    floor = ring_moments(coef, row, col, turn, outer)[0]
+    total = 0.0
+    unresolved = 0
+    for k in range(radius.size):
+        level = 0.5 * (height[k] + floor)
+        inside = crossing(coef, row, col, turn[0, k], turn[1, k], radius[k], 0.0, step, level)
+        outside = crossing(coef, row, col, turn[0, k], turn[1, k], radius[k], outer, step, level)
+        if math.isnan(inside) or math.isnan(outside):
+            unresolved += 1
+        else:
+            total += outside - inside
+    resolved = radius.size - unresolved
+    return (total / resolved if resolved else math.nan), unresolved
+
+
+@kernel()
+def ring_moments(coef: Any, row: float, col: float, turn: Any, r: float) -> tuple[float, float, float]:
+    """Means of I, I cos and I sin of the position angle on a circle."""
+    flat = 0.0
+    north = 0.0
+    east = 0.0
+    for k in range(turn.shape[1]):
+        here = value(coef, row + r * turn[0, k], col + r * turn[1, k])
+        flat += here
+        north += here * turn[0, k]
+        east -= here * turn[1, k]
+    rays = turn.shape[1]
+    return flat / rays, north / rays, east / rays
+
+
+@kernel()
+def asymmetry(
+    coef: Any, row: float, col: float, turn: Any, inner: float, outer: float
+) -> tuple[float, float]:
+    """Modulus and argument of the first azimuthal moment, each averaged over the radii of the ring."""
+    modulus = 0.0
+    north = 0.0
+    east = 0.0
+    for k in range(RING_RADII):
+        r = inner + (outer - inner) * (k + 0.5) / RING_RADII
+        flat, along_north, along_east = ring_moments(coef, row, col, turn, r)
+        size = math.hypot(along_north, along_east)
+        if flat <= 0.0 or size == 0.0:
+            continue
+        modulus += size / flat
+        north += along_north / size
+        east += along_east / size
+    return modulus / RING_RADII, math.atan2(east, north)
+
+
+@kernel()
+def disk_mean(coef: Any, row: float, col: float, turn: Any, size: float) -> float:
+    """Mean brightness inside a radius, on annuli of equal area."""
+    total = 0.0
+    for k in range(DISK_RADII):
+        total += ring_moments(coef, row, col, turn, size * math.sqrt((k + 0.5) / DISK_RADII))[0]
+    return total / DISK_RADII

@@ -123,7 +123,7 @@ def read_ring(
     InputError
         For a resolution that is not positive or finer than the beam that the image has.
     """
-    _check(image, pixel, resolution, beam)
+    check_image(image, pixel, resolution, beam)
     if pixel * PIXELS_PER_FWHM > resolution * (1.0 + SAME_LENGTH):
         return Reading(RingOutcome.TOO_COARSE)
     spectrum = prepare(image, pixel, widest=math.sqrt(max(resolution**2 - beam**2, 0.0)), averaged=averaged)
@@ -155,7 +155,8 @@ def read_blurred(
     return search.judge(peaks, dynamic_range)
 
 
-def _check(image: Array, pixel: float, resolution: float, beam: float) -> None:
+def check_image(image: Array, pixel: float, resolution: float, beam: float) -> None:
+    """Refuse, with a sentence, what no ring can be read on (an `InputError`)."""
     if image.ndim != 2:
         raise InputError(f"an image has two axes, north and east; this array has {image.ndim}")
     if not (math.isfinite(pixel) and pixel > 0.0):

@@ -14,7 +14,8 @@ import numpy as np
 from numpy.typing import NDArray
 
 from emission.contract import Array, Flow, Profile
-from emission.redshifts import redshift_where
+from emission.flows import EQUATOR
+from emission.redshifts import momentum_at, redshift_factor
 from raytrace.contract import Hit, RayStatus, Spacetime
 
 # Below s = −3 the factor g^(3+s) would grow without bound toward the horizon. No source does that: the
@@ -23,6 +24,8 @@ SPECTRAL_INDEX_RANGE = (-3.0, 10.0)
 # A real disk is not infinitely thin: paths longer than a thousand thicknesses mean nothing. Keeps grazing
 # light finite.
 SMALLEST_COSINE = 1e-3
+# Crossings shaded at a time: the dozens of temporary arrays then stay in the cache, which halves the time.
+BLOCK = 8192
 
 
 @dataclass(frozen=True, kw_only=True)
@@ -110,16 +113,23 @@ class ThinDisk:
             If the rays were traced without their momentum.
         """
         lit = self._lit(hit, spacetime)
-        radius = hit.radius[lit]
-        g = redshift_where(lit, self.flow, hit, spacetime)
-        value = self.profile.brightness(radius, spacetime=spacetime) * g ** (
-            4.0 if self.bolometric else 3.0 + self.spectral_index
-        )
-        if self.slant:
-            value *= self._lengthening(lit, hit, radius, g, spacetime)
+        radius, momentum = hit.radius[lit], momentum_at(lit, hit)
+        value = np.empty_like(radius)
+        for start in range(0, radius.size, BLOCK):
+            block = slice(start, start + BLOCK)
+            value[block] = self._observed(radius[block], momentum[:, block], spacetime)
         image = np.zeros((1, *hit.radius.shape))
         image[0][lit] = value
         return image
+
+    def _observed(self, radius: Array, momentum: Array, spacetime: Spacetime) -> Array:
+        """Intensity at the observer of light that left radii (n,) with momentum (3, n)."""
+        g = redshift_factor(self.flow, radius, momentum, spacetime)
+        power = 4.0 if self.bolometric else 3.0 + self.spectral_index
+        value = self.profile.brightness(radius, spacetime=spacetime) * g**power
+        if self.slant:
+            value /= np.maximum(_cosine(radius, momentum, g, spacetime), SMALLEST_COSINE)
+        return value
 
     def _lit(self, hit: Hit, spacetime: Spacetime) -> NDArray[np.bool_]:
         """Which crossings meet the disk and are seen."""
@@ -131,15 +141,11 @@ class ThinDisk:
             met[1:] &= ~np.logical_or.accumulate(met, axis=0)[:-1]
         return met
 
-    @staticmethod
-    def _lengthening(
-        lit: NDArray[np.bool_], hit: Hit, radius: Array, g: Array, spacetime: Spacetime
-    ) -> Array:
-        """1/|cos| of the angle between light and normal in the frame of the gas.
 
-        |cos| = |p_(θ)| over the energy there = g |p_θ|/√g_θθ. The gas moves within the plane, so the normal
-        e_θ/√g_θθ is the same unit vector for it as for an observer at rest.
-        """
-        assert hit.momentum is not None
-        height = np.sqrt(spacetime.metric(radius, np.pi / 2).theta_theta)
-        return 1.0 / np.maximum(np.abs(hit.momentum[1][lit]) * g / height, SMALLEST_COSINE)
+def _cosine(radius: Array, momentum: Array, g: Array, spacetime: Spacetime) -> Array:
+    """|cos| of the angle between light and normal in the frame of the gas: g |p_θ|/√g_θθ.
+
+    The gas moves within the plane, so the normal e_θ/√g_θθ is the same unit vector for it as for an observer
+    at rest, and its energy for the photon is 1/g.
+    """
+    return np.abs(momentum[1]) * g / np.sqrt(spacetime.metric(radius, EQUATOR).theta_theta)

@@ -39,8 +39,8 @@ class ThinDisk:
     flow : Flow
         Motion of the gas.
     spectral_index : float
-        s in I_ν ∝ ν^−s: positive for a spectrum that falls with frequency. Much of the literature writes I_ν
-        ∝ ν^+α; that α is −s. A bolometric profile takes 0 only.
+        s in I_ν ∝ ν^−s: positive for a spectrum that falls with frequency. Much of the literature writes
+        I_ν ∝ ν^+α; that α is −s. A bolometric profile takes 0 only.
     opaque : bool
         If true, only the lowest order that meets the disk between its outermost edges shines; otherwise all
         orders do.
@@ -65,9 +65,8 @@ class ThinDisk:
         low, high = SPECTRAL_INDEX_RANGE
         if not low <= self.spectral_index <= high:
             raise ValueError(
-                f"the spectral index {self.spectral_index:g} is outside {low:g} to {high:g}; it is s in I ∝ "
-                "ν^−s, "
-                "positive for brightness that falls with frequency"
+                f"the spectral index {self.spectral_index:g} is outside {low:g} to {high:g}; it is s in "
+                "I ∝ ν^−s, positive for brightness that falls with frequency"
             )
         if self.profile.bolometric and self.spectral_index != 0.0:
             raise ValueError(

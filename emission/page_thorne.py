@@ -2,8 +2,8 @@
 
 Page & Thorne 1974, ApJ 191, 499, eq. 15n (number from memory): conservation of energy and angular momentum,
 without torque at the innermost stable orbit r = 6, fixes the flux that leaves each face per unit proper area
-and time. Many copies print √3/3 before the logarithm; √3/2 is right, for only then is the whole luminosity 1
-− √(8/9) of Ṁ. G = c = M = 1; flux in units of Ṁ/M².
+and time. Many copies print √3/3 before the logarithm; √3/2 is right, for only then is the whole luminosity
+1 − √(8/9) of Ṁ. G = c = M = 1; flux in units of Ṁ/M².
 """
 
 from __future__ import annotations

@@ -60,14 +60,12 @@ class PowerLaw:
         if not 0.0 <= 2.0 * self.edge_width <= self.outer - self.inner:
             raise ValueError(
                 f"an edge width of {self.edge_width:g} M does not fit twice between {self.inner:g} and "
-                f"{self.outer:g} M; "
-                "give 0 for sharp edges or a smaller width"
+                f"{self.outer:g} M; give 0 for sharp edges or a smaller width"
             )
         if not math.isfinite(self.slope) or -self.slope * math.log10(self.outer / self.inner) > LARGEST_RISE:
             raise ValueError(
                 f"a slope of {self.slope:g} between {self.inner:g} and {self.outer:g} M makes the outer "
-                "edge brighter "
-                f"than the inner one by more than 10^{LARGEST_RISE:g}; a positive slope falls outward"
+                f"edge brighter than the inner one by more than 10^{LARGEST_RISE:g}; a positive slope falls outward"
             )
 
     @property

@@ -1,7 +1,7 @@
 """Redshift factor g = ν_observed/ν_emitted of light from moving gas, for an observer at rest at infinity.
 
-With the photon's momentum p per unit energy (p_t = −1) and the gas's four-velocity u, 1/g = −p·u = u^t − p_r
-u^r − p_φ u^φ (Cunningham 1975, ApJ 202, 788). Pure numbers; radii in M = 1.
+With the photon's momentum p per unit energy (p_t = −1) and the gas's four-velocity u,
+1/g = −p·u = u^t − p_r u^r − p_φ u^φ (Cunningham 1975, ApJ 202, 788). Pure numbers; radii in M = 1.
 """
 
 from __future__ import annotations

@@ -65,7 +65,8 @@ class PowerLaw:
         if not math.isfinite(self.slope) or -self.slope * math.log10(self.outer / self.inner) > LARGEST_RISE:
             raise ValueError(
                 f"a slope of {self.slope:g} between {self.inner:g} and {self.outer:g} M makes the outer "
-                f"edge brighter than the inner one by more than 10^{LARGEST_RISE:g}; a positive slope falls outward"
+                f"edge brighter than the inner one by more than 10^{LARGEST_RISE:g}; a positive slope "
+                "falls outward"
             )
 
     @property

@@ -101,8 +101,8 @@ def test_the_profile_is_the_flux_scaled_to_its_peak():
     np.testing.assert_allclose(profile.brightness(r), expected, rtol=1e-12)
 
 
-def test_without_relativity_a_disk_without_torque_peaks_at_49_36_of_its_edge():
-    # Shakura & Sunyaev 1973, A&A 24, 337: F ∝ r⁻³(1 − √(r_in/r)) (from memory); far out both must agree.
+def test_far_out_the_flux_is_that_of_a_disk_without_relativity():
+    # Shakura & Sunyaev 1973, A&A 24, 337: F ∝ r⁻³(1 − √(r_in/r)) (from memory).
     far = 1e6
     newton = 3.0 / (8.0 * math.pi) * far**-3 * (1.0 - math.sqrt(6.0 / far))
     assert flux(far) == pytest.approx(newton, rel=3e-3)

@@ -82,6 +82,19 @@ class Hit:
     fate: NDArray[np.int8]
     inclination: float
 
+    def only(self, order: int) -> Hit:
+        """The crossings of one order alone, as arrays of one row."""
+        row = slice(order, order + 1)
+        return Hit(
+            radius=self.radius[row],
+            azimuth=None if self.azimuth is None else self.azimuth[row],
+            delay=None if self.delay is None else self.delay[row],
+            momentum=None if self.momentum is None else self.momentum[:, row],
+            status=self.status[row],
+            fate=self.fate,
+            inclination=self.inclination,
+        )
+
 
 @runtime_checkable
 class Spacetime(Protocol):

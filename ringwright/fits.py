@@ -183,8 +183,8 @@ def _beam(path: str | Path, header: fits.Header, notes: list[str]) -> units.Quan
         raise InputError(f"{path}: a beam of {major:.4g} by {minor:.4g} µas is no beam; check BMAJ and BMIN")
     if major > minor * (1.0 + ROUND_BEAM):
         raise InputError(
-            f"{path}: the beam is elliptical, {major:.4g} by {minor:.4g} µas at {header.get('BPA', 0.0):g} deg; "
-            "the ring estimator needs a round one: restore the image with a round beam, or give its model in Jy/pixel"
+            f"{path}: the beam is elliptical, {major:.4g} by {minor:.4g} µas; "
+            "restore the image with a round beam, or give its model in Jy/pixel"
         )
     notes.append(f"smoothed to {major:.4g} µas already, as BMAJ says")
     return units.Quantity(np.sqrt(major * minor), "uas")
@@ -204,7 +204,8 @@ def _check_unit(path: str | Path, unit: str, has_beam: bool, notes: list[str]) -
         return True
     if not (_PER_PIXEL.fullmatch(plain) or _SURFACE.fullmatch(plain)):
         raise InputError(
-            f"{path}: BUNIT '{unit}' is no surface brightness; accepted are Jy/pixel, Jy/beam, Jy/sr, Jy/arcsec2, K"
+            f"{path}: BUNIT '{unit}' is no surface brightness; accepted are "
+            "Jy/pixel, Jy/beam, Jy/sr, Jy/arcsec2 and K"
         )
     return False
 

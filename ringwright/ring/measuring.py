@@ -32,7 +32,7 @@ from ringwright.ring.estimator import (
     read_blurred,
 )
 from ringwright.ring.outcomes import RingOutcome
-from ringwright.ring.smoothing import OVERSAMPLING, prepare
+from ringwright.ring.smoothing import FWHM_PER_SIGMA, OVERSAMPLING, prepare
 
 ESTIMATOR = "peak-ring"
 # The numerical error is what changes on a finer grid with more rays; the finer reading is the one reported.
@@ -166,8 +166,8 @@ def measure_many(paths: Iterable[str | Path], *, resolution: Any, **options: Any
         rings found; `table.write(path, format="ascii.ecsv")` keeps units and meta. Options are those of
         `measure`.
     """
-    paths = [str(path) for path in paths]
-    return ring_table(paths, [measure(path, resolution=resolution, **options) for path in paths])
+    names = [str(path) for path in paths]
+    return ring_table(names, [measure(name, resolution=resolution, **options) for name in names])
 
 
 def ring_table(paths: Sequence[str], found: Sequence[Ring]) -> Table:
@@ -222,6 +222,17 @@ def open_image(path: str | Path) -> Any:
     return Image.open(path)
 
 
+def at_resolution(image: Any, resolution: Any) -> tuple[NDArray[np.float64], float]:
+    """An image or file as it looks at a resolution, shape (ny, nx), and the side of its pixels."""
+    opened = open_image(image) if isinstance(image, (str, Path)) else image
+    data, pixel, beam, averaged = _plain_image(opened)
+    fwhm = length_in(resolution, opened.pixel.unit, "the resolution")
+    check_image(data, pixel, fwhm, beam)
+    more = math.sqrt(max(fwhm**2 - beam**2, 0.0))
+    spectrum = prepare(data, pixel, widest=more, averaged=averaged and more >= PIXELS_PER_FWHM * pixel)
+    return spectrum.smoothed(more / FWHM_PER_SIGMA), pixel
+
+
 def length_in(given: Any, unit: units.UnitBase, what: str) -> float:
     """A length on the sky or in M as a number in the unit of the image.
 
@@ -247,11 +258,8 @@ def length_in(given: Any, unit: units.UnitBase, what: str) -> float:
 def _read(
     image: Any, fwhm: float, centre: Any, lengths: str, dynamic_range: float
 ) -> tuple[Reading, float, tuple[str, ...]]:
-    unit, pixel = image.pixel.unit, float(image.pixel.value)
-    data: NDArray[np.float64] = image.data if isinstance(image, SkyImage) else image.total
-    averaged = image.averaged if isinstance(image, SkyImage) else True
-    beam = 0.0 if image.beam is None else float(image.beam.to_value(unit))
-    notes = tuple(image.notes)
+    unit, notes = image.pixel.unit, tuple(image.notes)
+    data, pixel, beam, averaged = _plain_image(image)
     check_image(data, pixel, fwhm, beam)
     if not dynamic_range > 1.0:
         raise InputError(f"a dynamic range is larger than 1, not {dynamic_range:g}")
@@ -278,6 +286,15 @@ def _read(
         for oversampling, rays in ((OVERSAMPLING, RAYS), (FINER * OVERSAMPLING, MORE_RAYS * RAYS))
     )
     return fine, abs(fine.diameter - rough.diameter), notes
+
+
+def _plain_image(image: Any) -> tuple[NDArray[np.float64], float, float, bool]:
+    """Brightness, pixel, beam (0 for none), and whether pixels are averages, of either kind of image."""
+    unit = image.pixel.unit
+    beam = 0.0 if image.beam is None else float(image.beam.to_value(unit))
+    if isinstance(image, SkyImage):
+        return image.data, float(image.pixel.value), beam, image.averaged
+    return image.total, float(image.pixel.value), beam, True
 
 
 def _lengths(lengths: str, unit: units.UnitBase) -> Lengths:

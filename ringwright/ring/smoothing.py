@@ -10,7 +10,6 @@ from __future__ import annotations
 
 import math
 from dataclasses import dataclass
-from typing import Any
 
 import numpy as np
 from numpy.typing import NDArray
@@ -51,13 +50,27 @@ class Spectrum:
     def blurred(self, sigma: float, pixel: float) -> Spline:
         """Convolve with a Gaussian of standard deviation `sigma` and sample about every `pixel`."""
         size = odd_length(self.size * self.pixel / pixel)
-        north = _response(fft.fftfreq(size), self.size, size, self.pixel, sigma, self.averaged)
-        east = _response(fft.rfftfreq(size), self.size, size, self.pixel, sigma, self.averaged)
-        spectrum = resized(self.transform, self.size, size) * north[:, None] * east[None, :]
+        north, east = fft.fftfreq(size), fft.rfftfreq(size)
+        response_north = self._response(north * size / self.size, sigma) / _spline_response(north)
+        response_east = self._response(east * size / self.size, sigma) / _spline_response(east)
+        spectrum = resized(self.transform, self.size, size) * response_north[:, None] * response_east[None, :]
         coefficients = fft.irfft2(spectrum, s=(size, size), overwrite_x=True) * (size / self.size) ** 2
         pixel = self.pixel * self.size / size
         middle = 0.5 * self.pixel / pixel
         return Spline(coefficients, pixel, (self.shape[0] - 1) * middle, (self.shape[1] - 1) * middle)
+
+    def smoothed(self, sigma: float) -> Array:
+        """The same, on the pixels of the image itself: for looking at, shape (ny, nx)."""
+        north, east = fft.fftfreq(self.size), fft.rfftfreq(self.size)
+        beam = self._response(north, sigma)[:, None] * self._response(east, sigma)[None, :]
+        whole = fft.irfft2(self.transform * beam, s=(self.size, self.size))
+        return np.ascontiguousarray(whole[: self.shape[0], : self.shape[1]])
+
+    def _response(self, frequency: Array, sigma: float) -> Array:
+        """Per axis, at frequencies in cycles per pixel: the Gaussian over the pixel's own average."""
+        gaussian = np.exp(-2.0 * (np.pi * sigma / self.pixel * frequency) ** 2)
+        box = np.where(np.abs(frequency) <= 0.5, np.sinc(frequency), 1.0) if self.averaged else 1.0
+        return np.asarray(gaussian / box)
 
 
 def odd_length(least: float) -> int:
@@ -106,12 +119,6 @@ def resized(transform: NDArray[np.complex128], old: int, new: int) -> NDArray[np
     return out
 
 
-def _response(
-    frequency: Any, old: int, new: int, pixel: float, sigma: float, averaged: bool
-) -> NDArray[np.float64]:
-    """Per axis: the Gaussian, over the pixel's own average, over the transform of the cubic B-spline."""
-    on_old = frequency * new / old  # cycles per old pixel
-    gaussian = np.exp(-2.0 * (np.pi * sigma / pixel * on_old) ** 2)
-    box = np.where(np.abs(on_old) <= 0.5, np.sinc(on_old), 1.0) if averaged else 1.0
-    spline = (2.0 + np.cos(2.0 * np.pi * frequency)) / 3.0
-    return np.asarray(gaussian / (box * spline))
+def _spline_response(frequency: Array) -> Array:
+    """Transform of the sampled cubic B-spline, at frequencies in cycles per sample."""
+    return np.asarray((2.0 + np.cos(2.0 * np.pi * frequency)) / 3.0)

@@ -56,7 +56,7 @@ def draw_ring(image: NDArray[np.float64], pixel: float, unit: str, ring: Any, pa
     if found:
         _mark_ring(axes, ring)
     _frame(axes, image, pixel, ring if found else None)
-    _mark_sky(axes, shown)
+    mark_sky(axes, shown)
     figure.text(0.03, 0.128, _caption(ring, shown), fontsize=9, va="top", linespacing=1.5, color="#202020")
     with written_whole(path) as temporary:
         figure.savefig(temporary, format="png", dpi=DPI, metadata={"Software": "ringwright"})
@@ -134,7 +134,7 @@ def _frame(axes: Axes, image: NDArray[np.float64], pixel: float, ring: Any) -> N
     axes.set_aspect("equal")
 
 
-def _mark_sky(axes: Axes, unit: str) -> None:
+def mark_sky(axes: Axes, unit: str) -> None:
     """Scale bar at the lower right, north and east marks at the lower left."""
     left, right = axes.get_xlim()
     bottom, top = axes.get_ylim()

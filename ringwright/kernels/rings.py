@@ -168,8 +168,14 @@ def peaks_around(
 @kernel()
 def dispersion(radius: Any) -> tuple[float, float]:
     """Mean radius, and variance over squared mean, of the peaks around a trial centre."""
-    mean = radius.mean()
-    return mean, ((radius - mean) ** 2).mean() / (mean * mean)
+    mean = 0.0
+    for r in radius:
+        mean += r
+    mean /= radius.size
+    variance = 0.0
+    for r in radius:
+        variance += (r - mean) ** 2
+    return mean, variance / radius.size / (mean * mean)
 
 
 @kernel()
@@ -198,27 +204,30 @@ def polish(
     coef: Any, row: float, col: float, turn: Any, ridge: Any, size: float, reach: float
 ) -> tuple[float, float]:
     """One Gauss-Newton step toward the least dispersion; the slopes are differences over `size`."""
-    moved = np.empty((3, ridge.size))
-    least = follow(coef, row, col, turn, ridge, 0.0, 0.0, reach, moved[0])
-    follow(coef, row, col, turn, ridge, size, 0.0, reach, moved[1])
-    follow(coef, row, col, turn, ridge, 0.0, size, reach, moved[2])
-    for m in range(3):
-        moved[m] /= moved[m].mean()
-    moved[1] -= moved[0]
-    moved[2] -= moved[0]
-    moved[0] -= 1.0
-    h00 = (moved[1] * moved[1]).sum()
-    h11 = (moved[2] * moved[2]).sum()
-    h01 = (moved[1] * moved[2]).sum()
-    g0 = (moved[1] * moved[0]).sum()
-    g1 = (moved[2] * moved[0]).sum()
+    here = np.empty(ridge.size)
+    north = np.empty(ridge.size)
+    west = np.empty(ridge.size)
+    least = follow(coef, row, col, turn, ridge, 0.0, 0.0, reach, here)
+    follow(coef, row, col, turn, ridge, size, 0.0, reach, north)
+    follow(coef, row, col, turn, ridge, 0.0, size, reach, west)
+    means = dispersion(here)[0], dispersion(north)[0], dispersion(west)[0]
+    h00 = h11 = h01 = g0 = g1 = 0.0
+    for k in range(ridge.size):
+        off = here[k] / means[0]
+        by_north = north[k] / means[1] - off
+        by_west = west[k] / means[2] - off
+        h00 += by_north * by_north
+        h11 += by_west * by_west
+        h01 += by_north * by_west
+        g0 += by_north * (off - 1.0)
+        g1 += by_west * (off - 1.0)
     determinant = h00 * h11 - h01 * h01
     if not determinant > 0.0:
         return 0.0, 0.0
     by_row = size * (h01 * g1 - h11 * g0) / determinant
     by_col = size * (h01 * g0 - h00 * g1) / determinant
     for _ in range(HALVINGS):
-        if follow(coef, row, col, turn, ridge, by_row, by_col, reach, moved[0]) < least:
+        if follow(coef, row, col, turn, ridge, by_row, by_col, reach, here) < least:
             return by_row, by_col
         by_row *= 0.5
         by_col *= 0.5
@@ -234,6 +243,17 @@ def _within(row: float, col: float, about_row: float, about_col: float, reach: f
 
 
 @kernel()
+def first_harmonic(radius: Any, turn: Any) -> tuple[float, float]:
+    """How far a circle seen from within lies off the point it is seen from."""
+    by_row = 0.0
+    by_col = 0.0
+    for k in range(radius.size):
+        by_row += 2.0 * radius[k] * turn[0, k]
+        by_col += 2.0 * radius[k] * turn[1, k]
+    return by_row / radius.size, by_col / radius.size
+
+
+@kernel()
 def scout_centre(
     coef: Any,
     about_row: float,
@@ -245,7 +265,8 @@ def scout_centre(
     samples: Any,
 ) -> tuple[float, float]:
     """The best of 19 trial centres within `reach` of a point."""
-    few = np.empty((2, (turn.shape[1] + COARSE_STRIDE - 1) // COARSE_STRIDE))
+    few = np.empty((turn.shape[1] + COARSE_STRIDE - 1) // COARSE_STRIDE)
+    heights = np.empty(few.size)
     best = math.inf
     best_row = about_row
     best_col = about_col
@@ -254,8 +275,8 @@ def scout_centre(
         angle = (trial - 1) * math.pi / (3.0 if trial < 7 else 6.0)
         row = about_row + away * math.cos(angle)
         col = about_col - away * math.sin(angle)
-        peaks_around(coef, row, col, turn, COARSE_STRIDE, start, stop, samples, few[0], few[1])
-        spread = dispersion(few[0])[1]
+        peaks_around(coef, row, col, turn, COARSE_STRIDE, start, stop, samples, few, heights)
+        spread = dispersion(few)[1]
         if spread < best * (1.0 - 1e-9):  # a tie keeps the earlier one, on every machine
             best, best_row, best_col = spread, row, col
     return best_row, best_col
@@ -283,8 +304,7 @@ def find_centre(
     peaks_around(coef, row, col, turn, 1, start, stop, samples, radius, height)
     mean, least = dispersion(radius)
     for _ in range(HARMONIC_STEPS):
-        step_row = 2.0 * (radius * turn[0]).mean()
-        step_col = 2.0 * (radius * turn[1]).mean()
+        step_row, step_col = first_harmonic(radius, turn)
         new_row, new_col = _within(row + step_row, col + step_col, about_row, about_col, allowed)
         peaks_around(coef, new_row, new_col, turn, 1, start, stop, samples, radius, height)
         mean, spread = dispersion(radius)

@@ -29,6 +29,8 @@ HALFWAY_TOLERANCE = 0.003
 # No interval is halved below this: a jump of the diameter or the loss of the ring is placed to 0.03 θ_g,
 # which moves a comparison by less than the width of the prior weight found there.
 LEAST_STEP = 0.03
+# Below x = 1, finer than one gravitational radius, nodes are the costliest and no observation stands: coarser there.
+LEAST_STEP_BELOW_ONE = 0.125
 
 
 @dataclass(frozen=True)
@@ -126,13 +128,14 @@ class _Table:
         left, right = self.read(low), self.read(high)
         if left.outcome == right.outcome and (not left.outcome.has_diameter or high <= self.finest):
             return
-        if left.outcome != right.outcome and high - low <= LEAST_STEP:
+        shortest = high - low <= (LEAST_STEP if high > FIRST_STEP else LEAST_STEP_BELOW_ONE)
+        if left.outcome != right.outcome and shortest:
             return
         middle = 0.5 * (low + high)
         between = self.read(middle)
         if left.outcome == right.outcome == between.outcome:
             miss = abs(0.5 * (left.diameter + right.diameter) / between.diameter - 1.0)
-            if miss <= HALFWAY_TOLERANCE or high - low <= LEAST_STEP or len(self.nodes) >= MOST_NODES:
+            if miss <= HALFWAY_TOLERANCE or shortest or len(self.nodes) >= MOST_NODES:
                 self.error = max(self.error, miss)
                 return
         if len(self.nodes) < MOST_NODES:

@@ -50,7 +50,7 @@ def test_a_fits_image_gives_the_exact_diameter_in_microarcseconds(tmp_path):
 
 
 def test_the_stated_numerical_error_covers_what_the_grid_does(tmp_path):
-    """Honesty: over shifts of the ring by parts of a pixel the diameter moves by no more than a few stated errors."""
+    """Honesty: over shifts of the ring within a pixel the diameter moves by a few stated errors at most."""
     rings = []
     for shift in (0.0, 0.21, 0.43, 0.67):
         image = averaged_ring(128, PIXEL, DIAMETER, INNATE, shift, 0.3 * shift, parts=3)

@@ -88,9 +88,8 @@ def rows() -> list[tuple[str, float, float, str]]:
 def main() -> None:
     """Print figure | required | reached | met."""
     for figure, required, reached, unit in rows():
-        print(
-            f"{figure} | {required:g} {unit} | {reached:.3g} {unit} | {'yes' if reached <= required else 'no'}"
-        )
+        met = "yes" if reached <= required else "no"
+        print(f"{figure} | {required:g} {unit} | {reached:.3g} {unit} | {met}")
 
 
 if __name__ == "__main__":

@@ -29,7 +29,7 @@ HALFWAY_TOLERANCE = 0.003
 # No interval is halved below this: a jump of the diameter or the loss of the ring is placed to 0.03 θ_g,
 # which moves a comparison by less than the width of the prior weight found there.
 LEAST_STEP = 0.03
-# Below x = 1, finer than one gravitational radius, nodes are the costliest and no observation stands: coarser there.
+# Below x = 1, finer than one gravitational radius, nodes cost most and no observation stands: coarser.
 LEAST_STEP_BELOW_ONE = 0.125
 
 

@@ -17,6 +17,8 @@ from ringwright.errors import InputError
 from ringwright.figures.ring import picture
 from ringwright.fits import write_fits
 from ringwright.ring import measure_many
+from ringwright.ring.measuring import ring_table
+from ringwright.ring.wording import describe
 
 PIXEL, DIAMETER, INNATE = 1.0, 44.0, 8.0
 CENTRE = (3.0, -2.0)
@@ -142,3 +144,12 @@ def test_a_picture_is_drawn_whatever_came_of_it(path, tmp_path, resolution):
     ring = rw.measure(path, resolution=resolution)
     drawn = picture(path, ring, tmp_path / "ring.png")
     assert drawn.read_bytes().startswith(b"\x89PNG")
+
+
+def test_the_words_name_units_and_the_usual_caution(path):
+    rings = [rw.measure(path, resolution="20 uas"), rw.measure(path, resolution="60 uas")]
+    words = describe(rings, ring_table(["a", "b"], rings))
+    assert f"diameter {rings[0].diameter.value:.3f} uas" in words
+    assert "There is no ring at this resolution" in words
+    assert "1 of 2 images have a diameter" in words
+    assert "is not the edge of the shadow" in words

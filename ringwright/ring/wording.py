@@ -1,6 +1,7 @@
 """What `ringwright measure` says: one paragraph per image in plain words, and mean and spread for several.
 
-Each number with its unit, and beside it the usual caution (docs/measuring.md). Lengths in µas, or in M where there is no sky.
+Each number with its unit, and beside it the usual caution (docs/measuring.md). Lengths in µas, or in M where
+there is no sky.
 """
 
 from __future__ import annotations
@@ -14,7 +15,10 @@ from astropy.table import Table
 from ringwright.ring.measuring import Ring
 from ringwright.ring.outcomes import RingOutcome
 
-CAUTION = "The bright ring is not the edge of the shadow, and its scatter (how far it is from a circle) is not an uncertainty."
+CAUTION = (
+    "The bright ring is not the edge of the shadow, and its scatter (how far it is from a circle) is not an "
+    "uncertainty."
+)
 
 
 def describe(rings: Sequence[Ring], table: Table) -> str:
@@ -29,9 +33,8 @@ def describe(rings: Sequence[Ring], table: Table) -> str:
 
 def _one(ring: Ring) -> str:
     unit = _unit(ring.diameter)
-    lines = [
-        f"{ring.name} at {ring.resolution.value:.4g} {unit} resolution ({ring.estimator}): {ring.outcome.name}"
-    ]
+    at = f"{ring.resolution.value:.4g} {unit} resolution"
+    lines = [f"{ring.name} at {at} ({ring.estimator}): {ring.outcome.name}"]
     if ring.outcome is not RingOutcome.RING:
         lines.append(f"  {ring.outcome.sentence}")
     if ring.outcome.has_diameter:
@@ -41,11 +44,13 @@ def _one(ring: Ring) -> str:
 
 def _numbers(ring: Ring, unit: str) -> list[str]:
     east, north = ring.centre.value
+    error = f"numerical error {ring.numerical_error.value:.1g} {unit}"
+    place = f"{east:+.2f} {unit} east, {north:+.2f} {unit} north of the middle"
+    dark = f"central brightness {ring.central_brightness:.3f}"
     return [
-        f"  diameter {ring.diameter.value:.3f} {unit}, numerical error {ring.numerical_error.value:.1g} {unit}; "
-        f"scatter {ring.scatter.value:.3f} {unit}",
-        f"  width {_width(ring, unit)}; centre {east:+.2f} {unit} east, {north:+.2f} {unit} north of the middle",
-        f"  asymmetry {ring.asymmetry:.3f}{_toward(ring)}; central brightness {ring.central_brightness:.3f}",
+        f"  diameter {ring.diameter.value:.3f} {unit}, {error}; scatter {ring.scatter.value:.3f} {unit}",
+        f"  width {_width(ring, unit)}; centre {place}",
+        f"  asymmetry {ring.asymmetry:.3f}{_toward(ring)}; {dark}",
     ]
 
 

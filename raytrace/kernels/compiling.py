@@ -39,10 +39,14 @@ def _cache_folder(sources: Path) -> str:
 
 @cache
 def _writable_base() -> Path:
-    in_environment = sys.prefix != sys.base_prefix
-    home = Path(os.environ.get("XDG_CACHE_HOME") or Path("~/.cache").expanduser())
-    for base in ([Path(sys.prefix, "var", "cache")] if in_environment else []) + [home]:
-        folder = base / "ringwright-kernels"
+    """The folder named by RINGWRIGHT_KERNELS, the environment's own, the user's, or a temporary one."""
+    candidates = [Path(os.environ["RINGWRIGHT_KERNELS"])] if "RINGWRIGHT_KERNELS" in os.environ else []
+    if sys.prefix != sys.base_prefix:
+        candidates.append(Path(sys.prefix, "var", "cache", "ringwright-kernels"))
+    user = os.environ.get("XDG_CACHE_HOME") or os.path.expanduser("~/.cache")  # noqa: PTH111 (without a home it stays)
+    if not user.startswith("~"):
+        candidates.append(Path(user, "ringwright-kernels"))
+    for folder in candidates:
         try:
             folder.mkdir(parents=True, exist_ok=True)
         except OSError:

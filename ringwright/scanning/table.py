@@ -7,12 +7,18 @@ Rows are padded with NaN beyond `node_count`; between two nodes a reading is lin
 
 from __future__ import annotations
 
+import json
 from dataclasses import dataclass, field
+from pathlib import Path
 from typing import Any
 
+import h5py
 import numpy as np
 from numpy.typing import NDArray
 
+from ringwright import products
+
+KIND = "scan"
 Array = NDArray[np.float64]
 
 # How a scene of a scan can end.
@@ -70,3 +76,82 @@ class ScanTable:
     base: dict[str, Any] = field(default_factory=dict)  # resolved base scene
     provenance: dict[str, Any] = field(default_factory=dict)
     path: str = ""
+
+    def save(self, path: str | Path, *, replace: bool = False) -> Path:
+        """Write the scan as an HDF5 product.
+
+        Raises
+        ------
+        InputError
+            If the path holds something else than a scan of this name and `replace` is not set.
+        """
+        target = products.check_target(path, KIND, self.name, replace=replace)
+        products.write_product(target, KIND, self.name, self._fill, self.provenance)
+        return target
+
+    @staticmethod
+    def open(path: str | Path) -> ScanTable:
+        """Read a scan product.
+
+        Raises
+        ------
+        InputError
+            If the file is not a readable, complete scan product.
+        """
+        with products.open_product(path, KIND) as file:
+            described = json.loads(str(file.attrs["parameters"]))
+            parameters = tuple(
+                ScanParameter(**{**entry, "labels": tuple(entry["labels"])}, values=file[entry["key"]][...])
+                for entry in described
+            )
+            return ScanTable(
+                name=str(file.attrs["name"]),
+                family=str(file.attrs["family"]),
+                parameters=parameters,
+                reason=tuple(text.decode() for text in file["reason"][...]),
+                base=json.loads(str(file.attrs["resolved"])),
+                provenance={key: file.attrs[key] for key in file.attrs if key not in _IDENTITY},
+                path=str(path),
+                **{name: file[name][...] for name in (*_PER_SCENE, *_PER_NODE)},
+            )
+
+    def _fill(self, file: h5py.File) -> None:
+        scenes, nodes = self.node.shape
+        products.scale(file, "scene", np.arange(scenes), "1", "number of the scene in the order of drawing")
+        products.scale(file, "place", np.arange(nodes), "1", "place in a scene's table of readings")
+        file.attrs["family"] = self.family
+        described = []
+        for parameter in self.parameters:
+            entry = {name: getattr(parameter, name) for name in ("key", "kind", "unit", "low", "high", "labels")}
+            described.append(entry)
+            units = "1" if parameter.unit == "M" else parameter.unit or "1"
+            long_name = f"{parameter.key}{' [GM/c^2]' if parameter.unit == 'M' else ''}"
+            self._add(file, parameter.key, parameter.values, units, long_name)
+        file.attrs["parameters"] = json.dumps(described)
+        for name, long_name in (_PER_SCENE | _PER_NODE).items():
+            self._add(file, name, getattr(self, name), "1", long_name)
+        reason = file.create_dataset("reason", data=list(self.reason), dtype=h5py.string_dtype())
+        products.attach(file, reason, ("scene",))
+
+    @staticmethod
+    def _add(file: h5py.File, name: str, values: np.ndarray, units: str, long_name: str) -> None:
+        dataset = file.create_dataset(name, data=values)
+        dataset.attrs["units"], dataset.attrs["long_name"] = units, long_name
+        products.attach(file, dataset, ("scene", "place")[: values.ndim])
+
+
+_IDENTITY = ("product", "name", "format_version", "family", "parameters")
+_PER_SCENE = {
+    "weight": "prior weight of the scene",
+    "status": "0 done, 1 failed",
+    "node_count": "how many nodes of the table are used",
+    "halfway_error": "largest relative error of the interpolated diameter half-way between nodes",
+}
+_PER_NODE = {
+    "node": "resolution over the angular gravitational radius, r/theta_g",
+    "diameter": "diameter over theta_g",
+    "width": "width over theta_g",
+    "asymmetry": "azimuthal asymmetry",
+    "central_brightness": "central brightness over brightness at the ring",
+    "outcome": "outcome of the measurement; 0 is a ring",
+}

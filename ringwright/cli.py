@@ -1,0 +1,111 @@
+"""The command line: one verb per job, results on standard output, log and progress on standard error.
+
+Exit status: 0 done, 1 failure, 2 bad input or usage, 3 finished with failed scenes, 130 interrupted. Each verb's work is
+imported when it is asked for, so that `--help` costs next to nothing.
+"""
+
+from __future__ import annotations
+
+import argparse
+import json
+import sys
+from collections.abc import Sequence
+from importlib import import_module
+
+from ringwright import __version__
+from ringwright.errors import InputError
+
+DONE, FAILURE, BAD_INPUT, SOME_FAILED, INTERRUPTED = 0, 1, 2, 3, 130
+
+
+def main(arguments: Sequence[str] | None = None) -> int:
+    """Run one verb and return the exit status."""
+    options = _parser().parse_args(arguments)
+    verb = getattr(import_module("ringwright.verbs"), options.verb)
+    try:
+        return int(verb(options))
+    except InputError as problem:
+        print(f"ringwright {options.verb}: {problem}", file=sys.stderr)
+        return BAD_INPUT
+    except KeyboardInterrupt:
+        print(f"ringwright {options.verb}: interrupted; nothing was overwritten", file=sys.stderr)
+        return INTERRUPTED
+    except OSError as problem:
+        print(f"ringwright {options.verb}: {problem.filename or ''}: {problem.strerror}", file=sys.stderr)
+        return FAILURE
+
+
+def print_json(value: object) -> None:
+    """Print one JSON object on standard output."""
+    print(json.dumps(value, indent=2, ensure_ascii=False, allow_nan=False))
+
+
+def _parser() -> argparse.ArgumentParser:
+    parser = argparse.ArgumentParser(
+        prog="ringwright",
+        description="From a measured ring to an angular gravitational radius and a mass with a named error.",
+        epilog="A ring diameter is not a shadow diameter, and a prior is not a measurement.",
+    )
+    parser.add_argument("--version", action="version", version=f"ringwright {__version__}")
+    verbs = parser.add_subparsers(dest="verb", required=True, metavar="VERB")
+    _add_render(verbs)
+    _add_measure(verbs)
+    _add_scan(verbs)
+    _add_compare(verbs)
+    _add_new(verbs)
+    verbs.add_parser("schema", help="print the JSON Schema of scene files, for editors that complete and check")
+    return parser
+
+
+def _add_render(verbs: argparse._SubParsersAction[argparse.ArgumentParser]) -> None:
+    parser = verbs.add_parser("render", help="render a scene file into an image (HDF5) with a picture beside it")
+    parser.add_argument("scene", help="scene file (TOML)")
+    parser.add_argument("--maps", action="store_true", help="also store crossing radius, redshift factor and delay")
+    parser.add_argument("--fits", action="store_true", help="also write a FITS image with a celestial WCS")
+    _add_common(parser, "outputs/<scene name>.h5")
+
+
+def _add_measure(verbs: argparse._SubParsersAction[argparse.ArgumentParser]) -> None:
+    parser = verbs.add_parser("measure", help="measure the ring on images (our HDF5, or FITS with a celestial WCS)")
+    parser.add_argument("images", nargs="+", metavar="IMAGE")
+    parser.add_argument("--resolution", required=True, help='FWHM to bring the image to, such as "20 uas" or "5 M"')
+    parser.add_argument("--centre", nargs=2, metavar=("EAST", "NORTH"), help="fix the centre instead of finding it")
+    parser.add_argument(
+        "--lengths",
+        choices=("relative", "published"),
+        default="relative",
+        help="lengths of the estimator in units of the diameter, or the published ones in uas",
+    )
+    parser.add_argument("--picture", action="store_true", help="draw the ring found on each image (PNG)")
+    _add_common(parser, "no table; with --picture, outputs/<image>-ring.png")
+
+
+def _add_scan(verbs: argparse._SubParsersAction[argparse.ArgumentParser]) -> None:
+    parser = verbs.add_parser("scan", help="render and read every scene that a scan file asks for")
+    parser.add_argument("scan", help="scan file (TOML)")
+    parser.add_argument("--workers", type=int, help="processes; all the cores unless given")
+    _add_common(parser, "outputs/<scan name>.h5")
+
+
+def _add_compare(verbs: argparse._SubParsersAction[argparse.ArgumentParser]) -> None:
+    parser = verbs.add_parser("compare", help="the mass that an observed ring allows, given scans of scenes")
+    parser.add_argument("observation", help="observation file (TOML)")
+    parser.add_argument("scans", nargs="+", metavar="SCAN_PRODUCT")
+    _add_common(parser, "figures in outputs/<observation name>-*.png")
+
+
+def _add_new(verbs: argparse._SubParsersAction[argparse.ArgumentParser]) -> None:
+    parser = verbs.add_parser("new", help="write a commented file to start from")
+    parser.add_argument("kind", choices=("scene", "scan", "observation"))
+    parser.add_argument("file")
+    parser.add_argument("--replace", action="store_true", help="replace the file if it exists")
+
+
+def _add_common(parser: argparse.ArgumentParser, default: str) -> None:
+    parser.add_argument("--out", help=f"where the result goes (default: {default})")
+    parser.add_argument("--replace", action="store_true", help="replace whatever stands there")
+    parser.add_argument("--json", action="store_true", help="print the result as one JSON object")
+
+
+if __name__ == "__main__":
+    sys.exit(main())

@@ -239,6 +239,6 @@ def _likelihood(observed: Observed, halfway_error: Array, diameter: Array) -> tu
     numerical = np.nan_to_num(halfway_error)[:, None, None] * d.mode
     plus, minus = np.hypot(d.plus, numerical), np.hypot(d.minus, numerical)
     offset = diameter - d.mode
-    z = offset / np.where(offset > 0.0, plus, minus)
-    likelihood = np.exp(-0.5 * z * z) * (math.sqrt(2.0 / math.pi) / (plus + minus))
-    return np.nan_to_num(likelihood), np.nan_to_num(np.abs(z), nan=np.inf)
+    z = np.abs(offset) / np.where(offset > 0.0, plus, minus)
+    z[np.isnan(z)] = np.inf
+    return np.exp(-0.5 * z * z) * (math.sqrt(2.0 / math.pi) / (plus + minus)), z

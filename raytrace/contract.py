@@ -1,7 +1,7 @@
 """What a spacetime offers and what a traced ray brings back: the contract between light paths and everything else.
 
-Geometrised units G = c = M = 1 throughout; angles in radians; arrays are float64. A new metric is a class that meets
-`Spacetime`, in one file, and one line in `raytrace.registry`.
+Geometrised units G = c = M = 1 throughout; angles in radians; arrays are float64. A new metric is a class
+that meets `Spacetime`, in one file, and one line in `raytrace.registry`.
 """
 
 from __future__ import annotations

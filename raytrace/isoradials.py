@@ -1,8 +1,8 @@
 """Images of equatorial circles: where on the screen the circle of radius r appears, order by order, and the critical curve.
 
-At a fixed screen angle the crossing radius of a given order grows with the distance b from the screen's origin, so the
-image is the root of r(b) = r, found by Chandrupatla's bracketing method (1997, Adv. Eng. Softw. 28, 145) from SciPy.
-G = c = M = 1; angles in radians; nothing here depends on a particular metric.
+At a fixed screen angle the crossing radius of a given order grows with the distance b from the screen's
+origin, so the image is the root of r(b) = r, found by Chandrupatla's bracketing method (1997, Adv. Eng.
+Softw. 28, 145) from SciPy. G = c = M = 1; angles in radians; nothing here depends on a particular metric.
 """
 
 from __future__ import annotations
@@ -15,7 +15,8 @@ from numpy.typing import ArrayLike, NDArray
 from raytrace.contract import Array, RayStatus, Spacetime
 from raytrace.registry import or_default
 
-# Outside this factor times the radius no image of a circle lies: the direct image of a distant circle is at b ≈ r + 1.
+# Outside this factor times the radius no image of a circle lies: the direct image of a distant circle is at
+# b ≈ r + 1.
 BRACKET_GROWTH = 1.25
 BRACKET_OFFSET = 12.0
 # Relative tolerance of b: a few units in the last place, so that ∂b/∂r of high orders keeps its digits.
@@ -142,7 +143,9 @@ def _solve(hole: Spacetime, radii: Array, angles: Array, inclination: float, ord
 
 
 def _monotone(radius: Array, status: NDArray[np.int8], horizon: float) -> Array:
-    """1/r at the crossing, continued beyond both ends of where a crossing exists so that a root stays bracketed."""
+    """1/r at the crossing, continued beyond both ends of where a crossing exists so that a root stays
+    bracketed.
+    """
     value = np.zeros_like(radius)
     crossed = status == RayStatus.CROSSED
     value[crossed] = 1.0 / radius[crossed]

@@ -1,17 +1,19 @@
 """A screen that follows the light: samples and weights between the images of an emitter's edges, order by order.
 
-At every screen angle the band of order n is cut into panels whose edges lie on the images of chosen circles, the emitter's
-own edges and the critical curve's r = r_photon among them; inside a panel Gauss–Legendre nodes, around the screen equally
-spaced angles, so that both directions converge spectrally for light that is smooth between the edges.
-G = c = M = 1; angles in radians; weights are areas on the screen [M²].
+At every screen angle the band of order n is cut into panels whose edges lie on the images of chosen
+circles, the emitter's own edges and the critical curve's r = r_photon among them; inside a panel
+Gauss–Legendre nodes, around the screen equally spaced angles, so that both directions converge spectrally
+for light that is smooth between the edges. G = c = M = 1; angles in radians; weights are areas on the
+screen [M²].
 """
 
 from __future__ import annotations
 
 import math
 from collections.abc import Sequence
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 from functools import cache
+from itertools import pairwise
 
 import numpy as np
 from numpy.polynomial import legendre
@@ -23,10 +25,10 @@ from raytrace.registry import or_default
 
 # Neighbouring panel edges differ by at most this factor in radius: a power law then needs few nodes.
 PANEL_RATIO = 1.7
-NODES = 8
+NODES = 12
 FEWEST_ANGLES = 32
 MOST_ANGLES = 2048
-MOST_NODES = 32
+MOST_NODES = 48
 # The brightness on which the screen is judged: as steep as emission near the hole usually is.
 TEST_SLOPE = 3.0
 # Coefficients at the end of a spectral series that are taken as its tail.
@@ -74,6 +76,11 @@ class Band:
         half_width = 0.5 * (self.edges[1:, None, :] - self.edges[:-1, None, :])
         step = 2.0 * math.pi / len(self.angles)
         return self.distance * half_width * self.node_weights[None, :, None] * step
+
+    def with_nodes(self, count: int) -> Band:
+        """The same panels with another number of nodes in each."""
+        points, weights = gauss_legendre(count)
+        return replace(self, nodes=points, node_weights=weights)
 
     @property
     def alpha(self) -> Array:
@@ -125,7 +132,8 @@ def screen(
     inclination : float
         [rad], 0 to π.
     edges : sequence of float
-        Radii where the emitter's brightness or its slope jumps, ascending [M]; the first and the last bound it.
+        Radii where the emitter's brightness or its slope jumps, ascending [M]; the first and the last bound
+        it.
     orders : int
         How many orders, from n = 0.
     tolerance : float
@@ -140,7 +148,8 @@ def screen(
     Raises
     ------
     ValueError
-        If the edges do not ascend from the horizon outward, or orders, tolerance or inclination make no sense.
+        If the edges do not ascend from the horizon outward, or orders, tolerance or inclination make no
+        sense.
     """
     hole = or_default(spacetime)
     inclination = checked_inclination(inclination)
@@ -162,7 +171,9 @@ def screen(
 
 
 def panel_radii(edges: Sequence[float], spacetime: Spacetime) -> Array:
-    """Radii of the panel edges: the emitter's own, the photon orbit, and enough between for a steep power law."""
+    """Radii of the panel edges: the emitter's own, the photon orbit, and enough between for a steep power
+    law.
+    """
     own = np.asarray(edges, dtype=np.float64)
     if own.ndim != 1 or own.size < 2 or not np.all(np.diff(own) > 0.0) or not np.all(np.isfinite(own)):
         raise ValueError(
@@ -176,7 +187,7 @@ def panel_radii(edges: Sequence[float], spacetime: Spacetime) -> Array:
     corners = np.union1d(own, [spacetime.photon_orbit] if inside else [])
     pieces = [
         np.geomspace(low, high, 1 + math.ceil(math.log(high / low) / math.log(PANEL_RATIO)))[:-1]
-        for low, high in zip(corners[:-1], corners[1:], strict=True)
+        for low, high in pairwise(corners)
     ]
     return np.concatenate([*pieces, own[-1:]])
 
@@ -236,7 +247,8 @@ def tails(values: Array) -> tuple[float, float]:
     Returns
     -------
     (float, float)
-        Largest coefficient in the tail of the Legendre and of the Fourier series, relative to the largest value.
+        Largest coefficient in the tail of the Legendre and of the Fourier series, relative to the largest
+        value.
     """
     scale = float(np.max(np.abs(values))) or 1.0
     count, angles = values.shape[1:]
@@ -251,20 +263,37 @@ def tails(values: Array) -> tuple[float, float]:
 def _resolved(
     hole: Spacetime, radii: Array, order: int, inclination: float, tolerance: float
 ) -> tuple[Band, float]:
-    """Refine one band until light as steep as r⁻³ is interpolated to the tolerance, and say what was reached."""
-    angles, nodes = FEWEST_ANGLES, NODES
+    """Refine one band until light as steep as r⁻³ is interpolated to the tolerance, and say what was
+    reached.
+    """
+    sampled = band(radii, order=order, inclination=inclination, angles=FEWEST_ANGLES, spacetime=hole)
     while True:
-        sampled = band(
-            radii, order=order, inclination=inclination, angles=angles, nodes=nodes, spacetime=hole
-        )
         across, around = tails(sampled_brightness(hole, sampled, inclination))
-        more_nodes, more_angles = (
-            across > tolerance and nodes < MOST_NODES,
-            around > tolerance and angles < MOST_ANGLES,
-        )
-        if not (more_nodes or more_angles):
+        finer = refined(sampled, across, around, tolerance, inclination, hole)
+        if finer is None:
             return sampled, max(across, around)
-        nodes, angles = nodes * (1 + more_nodes), angles * (1 + more_angles)
+        sampled = finer
+
+
+def refined(
+    sampled: Band, across: float, around: float, tolerance: float, inclination: float, spacetime: Spacetime
+) -> Band | None:
+    """A band with twice the nodes or angles where a tail asks for it; None where none does or a limit is
+    reached.
+    """
+    nodes, angles = len(sampled.nodes), len(sampled.angles)
+    if across > tolerance and nodes < MOST_NODES:
+        nodes *= 2
+    if around > tolerance and angles < MOST_ANGLES:
+        return band(
+            sampled.radii,
+            order=sampled.order,
+            inclination=inclination,
+            angles=2 * angles,
+            nodes=nodes,
+            spacetime=spacetime,
+        )
+    return None if nodes == len(sampled.nodes) else sampled.with_nodes(nodes)
 
 
 def sampled_brightness(hole: Spacetime, sampled: Band, inclination: float) -> Array:

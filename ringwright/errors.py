@@ -1,4 +1,6 @@
-"""The one family of errors that a user can cause: the command line turns them into one clear message and exit status 2."""
+"""The one family of errors that a user can cause: the command line turns them into one clear message and
+exit status 2.
+"""
 
 from __future__ import annotations
 

@@ -1,8 +1,8 @@
 """`Image`: a rendered view with its light per order, and the HDF5 product it is kept in.
 
-Arrays have the axes (order, y, x); row 0 is the southernmost, column 0 the easternmost. An image of a scene with a total flux is
-in Jy per pixel on a sky grid; one without is normalised so that all of the source's light is 1, and refuses to be read in Jy.
-Sky coordinates in µas where θ_g is known, else in M = GM/c².
+Arrays have the axes (order, y, x); row 0 is the southernmost, column 0 the easternmost. An image of a scene
+with a total flux is in Jy per pixel on a sky grid; one without is normalised so that all of the source's
+light is 1, and refuses to be read in Jy. Sky coordinates in µas where θ_g is known, else in M = GM/c².
 """
 
 from __future__ import annotations
@@ -112,7 +112,8 @@ class Image:
         Raises
         ------
         InputError
-            If the path holds something that is not the image of a scene of this name and `replace` is not set.
+            If the path holds something that is not the image of a scene of this name and `replace` is not
+            set.
         """
         target = products.check_target(path, KIND, self.name, replace=replace)
         products.write_product(target, KIND, self.name, self._fill, self.provenance)

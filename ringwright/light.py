@@ -1,32 +1,33 @@
 """The light of a scene on the screen, before any pixel: every emitter's every order as a band of smooth panels.
 
-Each band is sampled where `raytrace.screens` puts its nodes, shaded there, and kept as Chebyshev series across its panels at
-equally spaced screen angles; angles and nodes are doubled until the tail of the series is below the accuracy asked for.
-Lengths in M, brightness in the emitters' own unit; fluxes are ∫ I dα dβ in that unit times M².
+Each band is sampled where `raytrace.screens` puts its nodes, shaded there, and kept as Chebyshev series
+across its panels at equally spaced screen angles; angles and nodes are doubled until the tail of the series
+is below the accuracy asked for. Lengths in M, brightness in the emitters' own unit; fluxes are ∫ I dα dβ in
+that unit times M².
 """
 
 from __future__ import annotations
 
 import math
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 from functools import cache
 from typing import TYPE_CHECKING
 
 import numpy as np
 from numpy.polynomial import chebyshev
+from numpy.typing import NDArray
 
 import emission as em
 import raytrace as rt
 from raytrace.contract import Array, Hit, Spacetime
 from raytrace.screens import (
     FEWEST_ANGLES,
-    MOST_ANGLES,
-    MOST_NODES,
     NODES,
     Band,
     band,
     gauss_legendre,
     panel_radii,
+    refined,
     tails,
 )
 from ringwright.kernels.pixels import gather_light
@@ -39,6 +40,8 @@ FINER_ANGLES = 4
 FEWEST_FINE_ANGLES = 512
 # Side in pixels of the throw-away image on which light that lower orders hide in part is added up.
 COVER_PIXELS = 64
+# Terms below this share of the accuracy asked for, relative to the largest, are dropped.
+NEGLIGIBLE = 0.03
 # A backdrop reaches this much beyond the corner of the field.
 BEYOND_CORNER = 1.05
 
@@ -51,9 +54,11 @@ class LitBand:
     ----------
     order : int
     edges : array (panels + 1, n_angles)
-        Panel edges against screen angle, from angle 0 [M].
-    coefficients : array (panels, n_angles, terms)
+        Panel edges against screen angle, from angle 0, padded by one before and two after [M].
+    coefficients : array (panels, n_angles, m)
         Chebyshev coefficients of the brightness across each panel.
+    terms : int array (panels,)
+        How many of them each panel needs for the accuracy asked for.
     blockers : array (m, 2, n_angles)
         Edges of the opaque crossings in front [M].
     flux : float
@@ -65,6 +70,7 @@ class LitBand:
     order: int
     edges: Array
     coefficients: Array
+    terms: NDArray[np.int64]
     blockers: Array
     flux: float
     error: float
@@ -75,7 +81,9 @@ class LitBand:
         return float(np.median(self.edges[-1] - self.edges[0]))
 
     def add_to(self, image: Array, pixel: float, turn: float) -> None:
-        """Add this light to an image (ny, nx) centred on the hole; `turn` is the position angle of +β [rad]."""
+        """Add this light to an image (ny, nx) centred on the hole; `turn` is the position angle of +β
+        [rad].
+        """
         ny, nx = image.shape
         gather_light(
             image,
@@ -86,6 +94,7 @@ class LitBand:
             self.edges,
             _limits(self.edges[[0, -1]]),
             self.coefficients,
+            self.terms,
             self.blockers,
             _limits(self.blockers),
         )
@@ -130,7 +139,8 @@ def _lit_orders(
             order,
             edges,
             np.ascontiguousarray(np.moveaxis(_around(series, angles), 1, 2)),
-            np.array(blockers).reshape(-1, 2, angles),
+            _needed_terms(series, NEGLIGIBLE * accuracy),
+            np.array(blockers).reshape(-1, 2, edges.shape[1]),
             strength * float(np.sum(sampled.weight * brightness)),
             error,
         )
@@ -142,25 +152,20 @@ def _lit_orders(
 def _sampled(
     scene: Scene, emitter: em.contract.Emitter, radii: Array, order: int, accuracy: float
 ) -> tuple[Band, Array, float]:
-    """Double angles or nodes until the tails of the brightness are below the accuracy or a limit is reached."""
-    angles, nodes = FEWEST_ANGLES, NODES
+    """Double angles or nodes until the tails of the brightness are below the accuracy or a limit is
+    reached.
+    """
+    sampled = band(
+        radii, order=order, inclination=scene.inclination, angles=FEWEST_ANGLES, spacetime=scene.spacetime
+    )
     while True:
-        sampled = band(
-            radii,
-            order=order,
-            inclination=scene.inclination,
-            angles=angles,
-            nodes=nodes,
-            spacetime=scene.spacetime,
-        )
         brightness = _shaded(scene, emitter, sampled)
         across, around = tails(brightness)
         around = max(around, tails(sampled.edges[:, None, :])[1])
-        more_nodes = across > accuracy and nodes < MOST_NODES
-        more_angles = around > accuracy and angles < MOST_ANGLES
-        if not (more_nodes or more_angles):
+        finer = refined(sampled, across, around, accuracy, scene.inclination, scene.spacetime)
+        if finer is None:
             return sampled, brightness, max(across, around)
-        nodes, angles = nodes * (1 + more_nodes), angles * (1 + more_angles)
+        sampled = finer
 
 
 def _shaded(scene: Scene, emitter: em.contract.Emitter, sampled: Band) -> Array:
@@ -193,7 +198,7 @@ def _lit_sky(scene: Scene, strength: float, emitter: em.contract.Emitter) -> Lit
     series = np.einsum("mq,pqj->pmj", chebyshev_transform(NODES), brightness)
     coefficients = np.ascontiguousarray(np.moveaxis(_around(series, FEWEST_FINE_ANGLES), 1, 2))
     edges = _around(sky.edges, FEWEST_FINE_ANGLES)
-    return LitBand(0, edges, coefficients, np.empty((0, 2, FEWEST_FINE_ANGLES)), math.nan, 0.0)
+    return LitBand(0, edges, coefficients, np.array([1]), np.empty((0, 2, edges.shape[1])), math.nan, 0.0)
 
 
 def _critical(spacetime: Spacetime, inclination: float, angles: Array) -> Array:
@@ -205,17 +210,29 @@ def _with_hidden_light_removed(lit: LitBand) -> LitBand:
     side = 2.0 * float(np.max(lit.edges[-1]))
     cover = np.zeros((COVER_PIXELS, COVER_PIXELS))
     lit.add_to(cover, side / COVER_PIXELS, 0.0)
-    return LitBand(lit.order, lit.edges, lit.coefficients, lit.blockers, float(np.sum(cover)), lit.error)
+    return replace(lit, flux=float(np.sum(cover)))
+
+
+def _needed_terms(series: Array, share: float) -> NDArray[np.int64]:
+    """How many terms each panel needs so that what is dropped is below a share of the largest term of all."""
+    size = np.max(np.abs(series), axis=2)
+    needed = size > share * float(np.max(size))
+    return np.where(needed.any(axis=1), size.shape[1] - np.argmax(needed[:, ::-1], axis=1), 1).astype(
+        np.int64
+    )
 
 
 def _around(rows: Array, count: int) -> Array:
-    """Trigonometric interpolation of the last axis, half a step off angle 0, to `count` angles from 0."""
+    """Trigonometric interpolation of the last axis, half a step off angle 0, to `count` angles from 0,
+    padded.
+    """
     sampled = rows.shape[-1]
     spectrum = np.fft.rfft(rows, axis=-1)
     shift = np.exp(-1j * np.arange(spectrum.shape[-1]) * math.pi / sampled)
     if sampled % 2 == 0:
         spectrum[..., -1] *= 0.5
-    return np.fft.irfft(spectrum * shift, n=count, axis=-1) * (count / sampled)
+    rows = np.fft.irfft(spectrum * shift, n=count, axis=-1) * (count / sampled)
+    return np.concatenate([rows[..., -1:], rows, rows[..., :2]], axis=-1)
 
 
 @cache

@@ -1,6 +1,7 @@
 """What this machine lets us use: cores and memory, with the limits of containers and batch systems honoured.
 
-Cores come from the scheduler's affinity mask and SLURM's grant; memory from the physical total, the control group and SLURM.
+Cores come from the scheduler's affinity mask and SLURM's grant; memory from the physical total, the control
+group and SLURM.
 """
 
 from __future__ import annotations

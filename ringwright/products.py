@@ -1,7 +1,8 @@
 """Files that survive: products are written beside their target and renamed, and carry what made them.
 
-A reader sees the old file or the new one, never half of one. A file that is not our product of the same name is never replaced
-unless the caller says so. The same input gives the same bytes: no time, host or process number is stored.
+A reader sees the old file or the new one, never half of one. A file that is not our product of the same
+name is never replaced unless the caller says so. The same input gives the same bytes: no time, host or
+process number is stored.
 """
 
 from __future__ import annotations
@@ -62,7 +63,9 @@ def check_target(path: str | Path, kind: str, name: str, *, replace: bool) -> Pa
 
 @contextmanager
 def written_whole(target: str | Path) -> Iterator[Path]:
-    """A temporary file beside the target that takes its place when the block ends well, and vanishes otherwise."""
+    """A temporary file beside the target that takes its place when the block ends well, and vanishes
+    otherwise.
+    """
     target = Path(target)
     try:
         target.parent.mkdir(parents=True, exist_ok=True)

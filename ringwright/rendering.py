@@ -1,8 +1,9 @@
 """Rendering: a scene becomes an image whose every pixel holds the light that falls into its area.
 
-The light of each order is sampled where the screen puts its nodes and shared among pixels by `ringwright.light`, so that the
-flux per order does not depend on the pixel size, however thin the ring. Maps on request are traced at pixel centres.
-Units leave here: lengths in M become µas where θ_g is known, brightness becomes Jy per pixel where a total flux is.
+The light of each order is sampled where the screen puts its nodes and shared among pixels by
+`ringwright.light`, so that the flux per order does not depend on the pixel size, however thin the ring.
+Maps on request are traced at pixel centres. Units leave here: lengths in M become µas where θ_g is known,
+brightness becomes Jy per pixel where a total flux is.
 """
 
 from __future__ import annotations

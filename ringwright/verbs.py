@@ -86,7 +86,9 @@ def scan(options: argparse.Namespace) -> int:
         summary = {"name": table.name, "family": table.family, "scenes": len(table.status), "failed": failed}
         print_json({**summary, "with_a_ring": rings, "files": [str(target)]})
     else:
-        print(f"{table.name}: {len(table.status)} scenes, {rings} with a ring at some resolution, {failed} failed")
+        print(
+            f"{table.name}: {len(table.status)} scenes, {rings} with a ring at some resolution, {failed} failed"
+        )
         _print_all("failed", sorted({reason for reason in table.reason if reason}))
         _print_all("wrote", [target])
     return SOME_FAILED if failed else DONE

@@ -1,7 +1,8 @@
 """A picture of a rendered image: north up, east left, a scale bar, and brightness temperature beside the light.
 
-Light is shown linearly from zero. Brightness temperature is the Rayleigh–Jeans one, T_b = c² I / (2 k ν²); an image without
-a flux density or a frequency shows brightness relative to its maximum instead. Offsets in µas, or in M where θ_g is unknown.
+Light is shown linearly from zero. Brightness temperature is the Rayleigh–Jeans one, T_b = c² I / (2 k ν²);
+an image without a flux density or a frequency shows brightness relative to its maximum instead. Offsets in
+µas, or in M where θ_g is unknown.
 """
 
 from __future__ import annotations
@@ -9,12 +10,11 @@ from __future__ import annotations
 from pathlib import Path
 
 import numpy as np
-from matplotlib.axes import Axes
 from matplotlib.backends.backend_agg import FigureCanvasAgg
 from matplotlib.figure import Figure
 
 from raytrace.contract import Array
-from ringwright.figures.ring import COLOUR_MAP, DPI, MARK, mark_sky
+from ringwright.figures.ring import COLOUR_MAP, DPI, mark_sky
 from ringwright.image import Image
 from ringwright.products import written_whole
 

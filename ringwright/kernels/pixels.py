@@ -1,9 +1,10 @@
 """The light of one order that falls into each pixel: the integral over the pixel's area, however thin the ring.
 
-A band of light is known by its edges B_k(φ) and, between two edges, by Chebyshev coefficients of its brightness at equally
-spaced screen angles. Where a pixel lies inside the band its integral is a small Gauss rule; where an edge crosses it, rays from
-the screen's origin cut the pixel into chords, chords are cut at the edges, and each piece is integrated by itself.
-Lengths in M on the image plane, x to the west and y to the north; brightness in any unit, results in that unit times M².
+A band of light is known by its edges B_k(φ) and, between two edges, by Chebyshev coefficients of its
+brightness at equally spaced screen angles. Where a pixel lies inside the band its integral is a small Gauss
+rule; where an edge crosses it, rays from the screen's origin cut the pixel into chords, chords are cut at
+the edges, and each piece is integrated by itself. Lengths in M on the image plane, x to the west and y to
+the north; brightness in any unit, results in that unit times M².
 """
 
 import math
@@ -20,57 +21,62 @@ POINTS_3 = np.array([-0.7745966692414834, 0.0, 0.7745966692414834])
 WEIGHTS_3 = np.array([5.0 / 9.0, 8.0 / 9.0, 5.0 / 9.0])
 POINTS_4 = np.array([-0.8611363115940526, -0.3399810435848563, 0.3399810435848563, 0.8611363115940526])
 WEIGHTS_4 = np.array([0.34785484513745385, 0.6521451548625461, 0.6521451548625461, 0.34785484513745385])
-# A pixel wider than this share of the panel that it lies in is integrated by chords cut at the panel's edges; a narrower one by
-# three points a side, a narrow one by two. A panel holds light that falls by less than a factor of ten.
+# A pixel wider than this share of the panel that it lies in is integrated by chords cut at the panel's
+# edges; a narrower one by three points a side, a narrow one by two. A panel holds light that falls by less
+# than a factor of ten.
 SMOOTH_SHARE = 0.6
 FINE_SHARE = 0.25
-# Wedges between neighbouring corners of a cut pixel; a wedge is cut once more where an edge leaves the pixel, so that only a
-# pixel that an edge enters and leaves within one wedge is integrated with a kink inside.
+# Wedges between neighbouring corners of a cut pixel; a wedge is cut once more where an edge leaves the
+# pixel, so that only a pixel that an edge enters and leaves within one wedge is integrated with a kink
+# inside.
 CUT_STEPS = 6
 KINK_BISECTIONS = 20
 # Corners are approached this closely, in wedges, when asking how the edges lie to the chord.
 CORNER_INSET = 1e-6
+# Tables repeat one angle before the first and two after the last, so that four neighbours are always there.
+PADDING = 3
 # A pixel with a corner this close to the origin (in pixels) has no angle for that corner.
 AT_ORIGIN = 1e-9
 
 
 @kernel()
 def _angle_weights(phi, count, weights):
-    """Cubic Lagrange weights at an angle on a periodic grid; returns the index of the first of four points."""
+    """Cubic Lagrange weights at an angle; returns the index of the first of four points in a padded row."""
     place = phi / TURN
     place = (place - math.floor(place)) * count
-    base = int(place)
+    base = min(int(place), count - 1)
     f = place - base
     weights[0] = -f * (f - 1.0) * (f - 2.0) / 6.0
     weights[1] = (f + 1.0) * (f - 1.0) * (f - 2.0) / 2.0
     weights[2] = -(f + 1.0) * f * (f - 2.0) / 2.0
     weights[3] = (f + 1.0) * f * (f - 1.0) / 6.0
-    return (base - 1 + count) % count
+    return base
 
 
 @kernel()
 def _at_angle(row, first, weights):
-    """Interpolate one row of a periodic table."""
-    count = row.shape[0]
-    total = 0.0
-    for j in range(4):
-        total += weights[j] * row[(first + j) % count]
-    return total
+    """Interpolate one padded row of a table."""
+    return (
+        weights[0] * row[first]
+        + weights[1] * row[first + 1]
+        + weights[2] * row[first + 2]
+        + weights[3] * row[first + 3]
+    )
 
 
 @kernel()
-def _brightness(coefficients, first, weights, x):
-    """Brightness at x in (−1, 1) of a panel: Clenshaw's recurrence on angle-interpolated Chebyshev coefficients."""
-    count, terms = coefficients.shape
-    j0, j1, j2, j3 = first, (first + 1) % count, (first + 2) % count, (first + 3) % count
+def _brightness(coefficients, terms, first, weights, x):
+    """Brightness at x in (−1, 1) of a panel: Clenshaw's recurrence on angle-interpolated Chebyshev
+    coefficients.
+    """
     above = 0.0
     here = 0.0
     for m in range(terms - 1, -1, -1):
         c = (
-            weights[0] * coefficients[j0, m]
-            + weights[1] * coefficients[j1, m]
-            + weights[2] * coefficients[j2, m]
-            + weights[3] * coefficients[j3, m]
+            weights[0] * coefficients[first, m]
+            + weights[1] * coefficients[first + 1, m]
+            + weights[2] * coefficients[first + 2, m]
+            + weights[3] * coefficients[first + 3, m]
         )
         if m == 0:
             return c + x * here - above
@@ -90,10 +96,10 @@ def _hidden(t, blockers, first, weights):
 
 
 @kernel()
-def _point(x, y, turn, edges, coefficients, blockers, weights):
+def _point(x, y, turn, edges, coefficients, terms, blockers, weights):
     """Brightness at a point of the image plane; 0 outside the band or behind an opaque crossing."""
     b = math.sqrt(x * x + y * y)
-    first = _angle_weights(math.atan2(y, x) - turn, edges.shape[1], weights)
+    first = _angle_weights(math.atan2(y, x) - turn, edges.shape[1] - PADDING, weights)
     low = _at_angle(edges[0], first, weights)
     if b < low:
         return 0.0
@@ -102,13 +108,15 @@ def _point(x, y, turn, edges, coefficients, blockers, weights):
         if b <= high:
             if _hidden(b, blockers, first, weights):
                 return 0.0
-            return _brightness(coefficients[k], first, weights, (2.0 * b - low - high) / (high - low))
+            return _brightness(
+                coefficients[k], terms[k], first, weights, (2.0 * b - low - high) / (high - low)
+            )
         low = high
     return 0.0
 
 
 @kernel()
-def _along(t0, t1, edges, coefficients, blockers, first, weights):
+def _along(t0, t1, edges, coefficients, terms, blockers, first, weights):
     """∫ I t dt along a ray from the origin between t0 and t1, cut at every panel edge and blocker."""
     total = 0.0
     panels = edges.shape[0] - 1
@@ -130,7 +138,9 @@ def _along(t0, t1, edges, coefficients, blockers, first, weights):
                 for i in range(4):
                     t = middle + half * POINTS_4[i]
                     x = (2.0 * t - low - high) / (high - low)
-                    total += WEIGHTS_4[i] * half * t * _brightness(coefficients[k], first, weights, x)
+                    total += (
+                        WEIGHTS_4[i] * half * t * _brightness(coefficients[k], terms[k], first, weights, x)
+                    )
             start = end
         low = high
     return total
@@ -156,7 +166,9 @@ def _chord(x, y, half, cosine, sine):
 
 @kernel()
 def _corner_angles(x, y, half, corners):
-    """Directions of the corners as seen from the origin, ascending, unwrapped around the pixel's own; how many."""
+    """Directions of the corners as seen from the origin, ascending, unwrapped around the pixel's own; how
+    many.
+    """
     middle = math.atan2(y, x)
     found = 0
     for i in range(4):
@@ -180,9 +192,11 @@ def _corner_angles(x, y, half, corners):
 
 @kernel()
 def _lie(phi, x, y, half, turn, edges, blockers, weights):
-    """How the outer edges and the blockers lie to the chord at an angle: short of it, within, beyond; as one number."""
+    """How the outer edges and the blockers lie to the chord at an angle: short of it, within, beyond; as
+    one number.
+    """
     near, far = _chord(x, y, half, math.cos(phi), math.sin(phi))
-    first = _angle_weights(phi - turn, edges.shape[1], weights)
+    first = _angle_weights(phi - turn, edges.shape[1] - PADDING, weights)
     code = 0
     for side in range(2):
         edge = _at_angle(edges[side * (edges.shape[0] - 1)], first, weights)
@@ -195,7 +209,7 @@ def _lie(phi, x, y, half, turn, edges, blockers, weights):
 
 
 @kernel()
-def _wedge(start, stop, x, y, half, turn, edges, coefficients, blockers, weights):
+def _wedge(start, stop, x, y, half, turn, edges, coefficients, terms, blockers, weights):
     """The integral over the part of a pixel between two directions, by three chords."""
     total = 0.0
     middle, reach = 0.5 * (start + stop), 0.5 * (stop - start)
@@ -203,15 +217,17 @@ def _wedge(start, stop, x, y, half, turn, edges, coefficients, blockers, weights
         phi = middle + reach * POINTS_3[j]
         near, far = _chord(x, y, half, math.cos(phi), math.sin(phi))
         if far > near:
-            first = _angle_weights(phi - turn, edges.shape[1], weights)
-            light = _along(near, far, edges, coefficients, blockers, first, weights)
+            first = _angle_weights(phi - turn, edges.shape[1] - PADDING, weights)
+            light = _along(near, far, edges, coefficients, terms, blockers, first, weights)
             total += reach * WEIGHTS_3[j] * light
     return total
 
 
 @kernel()
 def _leaving(start, stop, here, x, y, half, turn, edges, blockers, weights):
-    """Bisect for the direction at which the edges no longer lie to the chord as they did: just before and just after."""
+    """Bisect for the direction at which the edges no longer lie to the chord as they did: just before and
+    just after.
+    """
     for _ in range(KINK_BISECTIONS):
         middle = 0.5 * (start + stop)
         if _lie(middle, x, y, half, turn, edges, blockers, weights) == here:
@@ -222,8 +238,10 @@ def _leaving(start, stop, here, x, y, half, turn, edges, blockers, weights):
 
 
 @kernel()
-def _cut_pixel(x, y, half, steps, turn, edges, coefficients, blockers, corners, weights):
-    """The integral over a pixel by chords from the origin, in wedges that end where an edge leaves the pixel."""
+def _cut_pixel(x, y, half, steps, turn, edges, coefficients, terms, blockers, corners, weights):
+    """The integral over a pixel by chords from the origin, in wedges that end where an edge leaves the
+    pixel.
+    """
     found = _corner_angles(x, y, half, corners)
     total = 0.0
     for piece in range(found - 1):
@@ -237,29 +255,30 @@ def _cut_pixel(x, y, half, steps, turn, edges, coefficients, blockers, corners, 
             there = _lie(stop - inset, x, y, half, turn, edges, blockers, weights)
             while here != there:
                 before, look = _leaving(look, stop - inset, here, x, y, half, turn, edges, blockers, weights)
-                total += _wedge(start, before, x, y, half, turn, edges, coefficients, blockers, weights)
+                total += _wedge(
+                    start, before, x, y, half, turn, edges, coefficients, terms, blockers, weights
+                )
                 start = before
                 here = _lie(look, x, y, half, turn, edges, blockers, weights)
-            total += _wedge(start, stop, x, y, half, turn, edges, coefficients, blockers, weights)
+            total += _wedge(start, stop, x, y, half, turn, edges, coefficients, terms, blockers, weights)
     return total
 
 
 @kernel()
-def _smooth_pixel(x, y, half, points, turn, edges, coefficients, blockers, weights):
+def _smooth_pixel(x, y, half, points, turn, edges, coefficients, terms, blockers, weights):
     """The integral over a pixel that no edge crosses: a Gauss rule of two or three points a side."""
     total = 0.0
     if points == 2:
         for i in range(2):
             for j in range(2):
                 px, py = x + half * POINTS_2[i], y + half * POINTS_2[j]
-                total += _point(px, py, turn, edges, coefficients, blockers, weights)
-    else:
-        for i in range(3):
-            for j in range(3):
-                px, py = x + half * POINTS_3[i], y + half * POINTS_3[j]
-                total += (
-                    WEIGHTS_3[i] * WEIGHTS_3[j] * _point(px, py, turn, edges, coefficients, blockers, weights)
-                )
+                total += _point(px, py, turn, edges, coefficients, terms, blockers, weights)
+        return total * half * half
+    for i in range(3):
+        for j in range(3):
+            px, py = x + half * POINTS_3[i], y + half * POINTS_3[j]
+            light = _point(px, py, turn, edges, coefficients, terms, blockers, weights)
+            total += WEIGHTS_3[i] * WEIGHTS_3[j] * light
     return total * half * half
 
 
@@ -267,7 +286,7 @@ def _smooth_pixel(x, y, half, points, turn, edges, coefficients, blockers, weigh
 def _panel_width(x, y, turn, edges, weights):
     """Width of the panel that holds a point within the band."""
     b = math.sqrt(x * x + y * y)
-    first = _angle_weights(math.atan2(y, x) - turn, edges.shape[1], weights)
+    first = _angle_weights(math.atan2(y, x) - turn, edges.shape[1] - PADDING, weights)
     low = _at_angle(edges[0], first, weights)
     high = low
     for k in range(1, edges.shape[0]):
@@ -286,7 +305,7 @@ def _range_within(row, x, y, half, turn, weights):
     for i in range(-1, 2):
         for j in range(-1, 2):
             px, py = x + i * half, y + j * half
-            first = _angle_weights(math.atan2(py, px) - turn, row.shape[0], weights)
+            first = _angle_weights(math.atan2(py, px) - turn, row.shape[0] - PADDING, weights)
             value = _at_angle(row, first, weights)
             least, most = min(least, value), max(most, value)
     slack = most - least
@@ -311,7 +330,8 @@ def _touched(row, limits, nearest, farthest, x, y, half, turn, weights):
 
 
 @kernel()
-def _pixel(x, y, half, turn, edges, limits, coefficients, blockers, blocker_limits, corners, weights):
+def _pixel(x, y, half, turn, edges, limits, coefficients, terms, blockers, blocker_limits, corners, weights):
+    """The light of the band within one pixel."""
     nearest = math.hypot(max(abs(x) - half, 0.0), max(abs(y) - half, 0.0))
     farthest = math.hypot(abs(x) + half, abs(y) + half)
     last = edges.shape[0] - 1
@@ -327,16 +347,18 @@ def _pixel(x, y, half, turn, edges, limits, coefficients, blockers, blocker_limi
             )
             cut = cut or where == 0
     if cut:
-        return _cut_pixel(x, y, half, CUT_STEPS, turn, edges, coefficients, blockers, corners, weights)
+        return _cut_pixel(x, y, half, CUT_STEPS, turn, edges, coefficients, terms, blockers, corners, weights)
     share = 2.0 * half / _panel_width(x, y, turn, edges, weights)
     if share > SMOOTH_SHARE or nearest < 2.0 * half:
-        return _cut_pixel(x, y, half, 1, turn, edges, coefficients, blockers, corners, weights)
+        return _cut_pixel(x, y, half, 1, turn, edges, coefficients, terms, blockers, corners, weights)
     points = 3 if share > FINE_SHARE else 2
-    return _smooth_pixel(x, y, half, points, turn, edges, coefficients, blockers, weights)
+    return _smooth_pixel(x, y, half, points, turn, edges, coefficients, terms, blockers, weights)
 
 
 @kernel(parallel=True)
-def gather_light(image, pixel, first_x, first_y, turn, edges, limits, coefficients, blockers, blocker_limits):
+def gather_light(
+    image, pixel, first_x, first_y, turn, edges, limits, coefficients, terms, blockers, blocker_limits
+):
     """Add the light of one band to an image.
 
     Parameters
@@ -348,11 +370,13 @@ def gather_light(image, pixel, first_x, first_y, turn, edges, limits, coefficien
     turn : float
         Position angle of +β [rad]: image angle minus screen angle.
     edges : array (panels + 1, n_angles)
-        Edges of the panels against screen angle, from angle 0 [M].
+        Edges of the panels against screen angle, from angle 0, padded by one before and two after [M].
     limits : array (2, 2)
         Least and greatest of the first and of the last edge [M].
     coefficients : array (panels, n_angles, terms)
         Chebyshev coefficients of the brightness across each panel.
+    terms : int array (panels,)
+        How many of them each panel needs.
     blockers, blocker_limits : arrays (m, 2, n_angles), (m, 2, 2)
         Inner and outer edges of opaque crossings in front, and their ranges [M].
     """
@@ -365,5 +389,16 @@ def gather_light(image, pixel, first_x, first_y, turn, edges, limits, coefficien
         for column in range(columns):
             x = first_x + (column + 0.5) * pixel
             image[row, column] += _pixel(
-                x, y, half, turn, edges, limits, coefficients, blockers, blocker_limits, corners, weights
+                x,
+                y,
+                half,
+                turn,
+                edges,
+                limits,
+                coefficients,
+                terms,
+                blockers,
+                blocker_limits,
+                corners,
+                weights,
             )

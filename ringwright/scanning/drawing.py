@@ -1,7 +1,8 @@
 """Which scenes a scan asks for: a grid, or a scrambled Sobol sequence over the prior, always the same for the same seed.
 
-Every varied parameter maps one number in [0, 1) to a value through its own prior, so a Sobol point is a scene and equal
-volumes carry equal prior weight (Sobol 1967; scrambling after Owen 1998, from SciPy). No units: they are the parameters' own.
+Every varied parameter maps one number in [0, 1) to a value through its own prior, so a Sobol point is a
+scene and equal volumes carry equal prior weight (Sobol 1967; scrambling after Owen 1998, from SciPy). No
+units: they are the parameters' own.
 """
 
 from __future__ import annotations

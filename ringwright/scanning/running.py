@@ -1,7 +1,8 @@
 """Running a scan: every scene drawn is rendered, read at every resolution, and kept in one table.
 
-Scenes run in worker processes and come back as small rows; only the parent writes. A scene that fails is recorded with its
-reason and stops nothing. Lengths in M: a scan needs no mass or distance, which enter in the comparison.
+Scenes run in worker processes and come back as small rows; only the parent writes. A scene that fails is
+recorded with its reason and stops nothing. Lengths in M: a scan needs no mass or distance, which enter in
+the comparison.
 """
 
 from __future__ import annotations
@@ -153,7 +154,13 @@ def _table(plan: ScanPlan, drawn: list[tuple[Any, ...]], rows: list[Row]) -> Sca
         family=plan.family,
         parameters=tuple(
             ScanParameter(
-                vary.key, vary.kind, vary.unit, vary.low, vary.high, tuple(vary.labels), vary.numbers(list(column))
+                vary.key,
+                vary.kind,
+                vary.unit,
+                vary.low,
+                vary.high,
+                tuple(vary.labels),
+                vary.numbers(list(column)),
             )
             for vary, column in zip(plan.vary, columns, strict=True)
         ),
@@ -169,7 +176,9 @@ def _table(plan: ScanPlan, drawn: list[tuple[Any, ...]], rows: list[Row]) -> Sca
         asymmetry=stacked("asymmetry", np.nan),
         central_brightness=stacked("central_brightness", np.nan),
         outcome=stacked("outcome", -1.0).astype(np.int8),
-        halfway_error=np.array([np.nan if row.readings is None else row.readings.halfway_error for row in rows]),
+        halfway_error=np.array(
+            [np.nan if row.readings is None else row.readings.halfway_error for row in rows]
+        ),
         base=plan.base.resolved(),
         provenance=products.provenance(plan.text, plan.base.resolved(), seed=plan.seed, method=plan.method),
     )

@@ -237,27 +237,38 @@ def legendre_transform(count: int) -> Array:
     return (degree[:, None] + 0.5) * legendre.legvander(points, count - 1).T * weights
 
 
-def tails(values: Array) -> tuple[float, float]:
+def tails(sampled: Band, values: Array) -> tuple[float, float]:
     """How much of a band's samples is left at the end of their series, across panels and around the screen.
 
     Parameters
     ----------
+    sampled : Band
     values : array (panels, q, n_angles)
+        Brightness at the band's samples.
 
     Returns
     -------
     (float, float)
-        Largest coefficient in the tail of the Legendre and of the Fourier series, relative to the largest
-        value.
+        Largest coefficient in the tail of the Legendre and of the Fourier series, relative to the largest value; around
+        the screen also what the tail holds of the flux per angle, relative to the flux.
     """
     scale = float(np.max(np.abs(values))) or 1.0
-    count, angles = values.shape[1:]
-    across = np.einsum("mq,pqj->pmj", legendre_transform(count), values)
-    around = np.fft.rfft(values, axis=2) / angles
+    across = np.einsum("mq,pqj->pmj", legendre_transform(values.shape[1]), values)
+    around = _end_of_series(values) / values.shape[2]
+    flux = np.sum(sampled.weight * values, axis=(0, 1))
     return (
         float(np.max(np.abs(across[:, -2:]))) / scale,
-        float(np.max(np.abs(around[:, :, int(TAIL_SHARE * around.shape[2]) :]))) / scale,
+        max(
+            float(np.max(around)) / scale,
+            2.0 * float(np.sum(_end_of_series(flux))) / (abs(float(flux.sum())) or 1.0),
+        ),
     )
+
+
+def _end_of_series(values: Array) -> Array:
+    """Sizes of the last Fourier coefficients along the last axis."""
+    sizes: Array = np.abs(np.fft.rfft(values, axis=-1))
+    return sizes[..., int(TAIL_SHARE * sizes.shape[-1]) :]
 
 
 def _resolved(
@@ -268,7 +279,7 @@ def _resolved(
     """
     sampled = band(radii, order=order, inclination=inclination, angles=FEWEST_ANGLES, spacetime=hole)
     while True:
-        across, around = tails(sampled_brightness(hole, sampled, inclination))
+        across, around = tails(sampled, sampled_brightness(hole, sampled, inclination))
         finer = refined(sampled, across, around, tolerance, inclination, hole)
         if finer is None:
             return sampled, max(across, around)

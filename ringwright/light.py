@@ -160,8 +160,7 @@ def _sampled(
     )
     while True:
         brightness = _shaded(scene, emitter, sampled)
-        across, around = tails(brightness)
-        around = max(around, tails(sampled.edges[:, None, :])[1])
+        across, around = tails(sampled, brightness)
         finer = refined(sampled, across, around, accuracy, scene.inclination, scene.spacetime)
         if finer is None:
             return sampled, brightness, max(across, around)

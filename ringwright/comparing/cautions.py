@@ -31,7 +31,7 @@ FEWEST_IN_END = 8  # scenes needed to fit a slope at all
 RESOLVED = 0.73
 END_SIGMA = 2.0  # a table that stops within two standard errors of the observed diameter cuts the posterior
 END_SHARE = 0.05  # of the posterior weight
-READING_ERROR = 0.003  # promised for the interpolation between two nodes of a table
+WIDENED = 0.03  # of the error of the diameter by that of the readings, before it is worth a sentence
 COVERED = 0.95  # of a prior on a scene parameter, inside the range of the scan
 FIT = 3.0  # standard errors within which a scene can be said to look like the observation
 
@@ -61,7 +61,12 @@ def of_scan(
     observed: Observed, table: ScanTable, replaced: tuple[Replaced, ...], ring: Posterior
 ) -> list[Caution]:
     """Everything about one scan: failed, few, coarsely read, cut by a table, or outside a prior."""
-    found = [_failed(table), _few(table, ring), _coarse(table), _table_end(observed, table, ring)]
+    found = [
+        _failed(table),
+        _few(table, ring),
+        _coarse(observed, table, ring),
+        _table_end(observed, table, ring),
+    ]
     return [item for item in found if item is not None] + _outside(table, replaced)
 
 
@@ -124,15 +129,16 @@ def _few(table: ScanTable, ring: Posterior) -> Caution | None:
     )
 
 
-def _coarse(table: ScanTable) -> Caution | None:
-    worst = float(np.nanmax(table.halfway_error, initial=0.0))
-    if worst <= READING_ERROR:
+def _coarse(observed: Observed, table: ScanTable, ring: Posterior) -> Caution | None:
+    numerical = math.sqrt(float(ring.shares() @ np.nan_to_num(table.halfway_error) ** 2))
+    widened = math.hypot(1.0, numerical / observed.diameter.relative) - 1.0
+    if widened <= WIDENED:
         return None
     return Caution(
         "coarse-readings",
-        f"Between the nodes of its table a scene of {table.name} is read to {100 * worst:.1f} % only; "
-        "this was added to the error.",
-        "Run the scan with more pixels or a larger field.",
+        f"The scenes of {table.name} are read to {100 * numerical:.1f} % only, which was added to the error of the "
+        f"diameter and widens it by {100 * widened:.0f} %; a diameter that jumps with the resolution is one cause.",
+        "Run the scan with more pixels or a larger field; where the diameter jumps, look at the images of those scenes.",
     )
 
 

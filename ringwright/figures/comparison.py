@@ -40,7 +40,7 @@ PLOTTED_TAIL = 1e-3  # probability left out at either end of an axis
 COLUMNS = 3
 CURVE_POINTS = 61
 PREDICTION_NODES = 41
-BINS = 60
+BINS = 24
 JITTER = 0.28
 
 

@@ -97,8 +97,11 @@ def test_a_posterior_cut_by_the_end_of_a_table_is_warned_of():
 
 
 def test_coarse_readings_are_warned_of():
-    answer = compare_numbers(observed(), (family_table(halfway_error=np.full(256, 0.01)),))
+    answer = compare_numbers(observed(), (family_table(halfway_error=np.full(256, 0.02)),))
     assert codes(answer) == ["coarse-readings"]
+    # √(1 + (0.02/0.0714)²) − 1 = 3.8 %.
+    assert "widens it by 4 %" in answer.warnings[0].text
+    assert codes(compare_numbers(observed(), (family_table(halfway_error=np.full(256, 0.003)),))) == []
 
 
 def test_a_range_cut_where_the_posterior_rises_is_warned_of():

@@ -21,10 +21,13 @@ CONTENDER = 0.90
 NEWTON_STEPS = 12
 NEWTON_TOLERANCE = 1e-11  # [samples]; far below any reading, so that machines agree
 BISECTIONS = 36
-# Trial centres: the flux centroid, 6 at half and 12 at the whole of the allowed distance, each judged on
-# every fifth ray.
+# Trial centres: the flux centroid and this many hexagonal rings around it, each judged on every fifth ray.
+SCOUT_RINGS = 3
+STARTS = 3  # trial centres to step down from, unless the first one leads to a fair circle
+FAIR_CIRCLE = 0.03**2  # variance over squared mean
+TIE = 1e-9
 COARSE_STRIDE = 5
-HARMONIC_STEPS = 6
+HARMONIC_STEPS = 4
 HARMONIC_DONE = 0.01  # of the mean radius: near enough for Gauss-Newton
 # Gauss-Newton on the peak radii polishes the centre; its slopes are differences over this share of the mean
 # radius.
@@ -32,6 +35,11 @@ DIFFERENCE = 1e-4
 POLISHES = 5
 CENTRE_TOLERANCE = 1e-6  # [mean radius]; moves a diameter by less than that times the scatter
 HALVINGS = 4
+# A trial centre with more than this share of its rays at a limit has no ring around it (step 7); between two of those the
+# one with fewer is nearer to a ring. Without this a bright knot would win: seen from its top every ray peaks at the start.
+LIMIT_SHARE = 0.05
+NO_CENTRE = 1e3  # far above any dispersion
+HOPELESS = 0.5  # share of rays at a limit from which no step leads to a ring
 RING_RADII = 16  # radii between the two edges of the ring for the azimuthal moments
 DISK_RADII = 6  # equal-area annuli of the central disk
 
@@ -179,6 +187,14 @@ def dispersion(radius: Any) -> tuple[float, float]:
 
 
 @kernel()
+def demerit(radius: Any, limits: int) -> float:
+    """What the search for a centre makes small: the dispersion, and before it the rays without a peak."""
+    spread = dispersion(radius)[1]
+    share = limits / radius.size
+    return spread if share <= LIMIT_SHARE else NO_CENTRE * (1.0 + share) + spread
+
+
+@kernel()
 def follow(
     coef: Any,
     row: float,
@@ -254,7 +270,7 @@ def first_harmonic(radius: Any, turn: Any) -> tuple[float, float]:
 
 
 @kernel()
-def scout_centre(
+def scout_centres(
     coef: Any,
     about_row: float,
     about_col: float,
@@ -263,23 +279,33 @@ def scout_centre(
     start: float,
     stop: float,
     samples: Any,
-) -> tuple[float, float]:
-    """The best of 19 trial centres within `reach` of a point."""
+) -> Any:
+    """Trial centres within `reach` of a point, each as (demerit, row, col), judged on every fifth ray."""
     few = np.empty((turn.shape[1] + COARSE_STRIDE - 1) // COARSE_STRIDE)
     heights = np.empty(few.size)
-    best = math.inf
-    best_row = about_row
-    best_col = about_col
-    for trial in range(19):
-        away = 0.0 if trial == 0 else (0.5 if trial < 7 else 1.0) * reach
-        angle = (trial - 1) * math.pi / (3.0 if trial < 7 else 6.0)
-        row = about_row + away * math.cos(angle)
-        col = about_col - away * math.sin(angle)
-        peaks_around(coef, row, col, turn, COARSE_STRIDE, start, stop, samples, few, heights)
-        spread = dispersion(few)[1]
-        if spread < best * (1.0 - 1e-9):  # a tie keeps the earlier one, on every machine
-            best, best_row, best_col = spread, row, col
-    return best_row, best_col
+    trials = np.empty((1 + SCOUT_RINGS * (SCOUT_RINGS + 1) * 3, 3))
+    trial = 0
+    for ring in range(SCOUT_RINGS + 1):
+        for k in range(max(1, 6 * ring)):
+            angle = k * math.pi / (3.0 * max(1, ring))
+            row = about_row + reach * ring / SCOUT_RINGS * math.cos(angle)
+            col = about_col - reach * ring / SCOUT_RINGS * math.sin(angle)
+            limits = peaks_around(coef, row, col, turn, COARSE_STRIDE, start, stop, samples, few, heights)
+            trials[trial, 0] = demerit(few, limits)
+            trials[trial, 1] = row
+            trials[trial, 2] = col
+            trial += 1
+    return trials
+
+
+@kernel()
+def best_trial(trials: Any) -> int:
+    """The least demerit; of a tie the earlier one, on every machine."""
+    best = 0
+    for k in range(1, trials.shape[0]):
+        if trials[k, 0] < trials[best, 0] * (1.0 - TIE):
+            best = k
+    return best
 
 
 @kernel()
@@ -297,32 +323,50 @@ def find_centre(
 ) -> tuple[float, float]:
     """Where the dispersion of the peak radius is least, within `allowed` of a point.
 
-    A scouting grid, then steps along the first harmonic of the peak radius (exact for a circle), then
-    Gauss-Newton.
+    Steps down from the best trial centre; where that ends on no fair circle, from the next ones as well.
     """
-    row, col = scout_centre(coef, about_row, about_col, allowed, turn, start, stop, samples)
-    peaks_around(coef, row, col, turn, 1, start, stop, samples, radius, height)
-    mean, least = dispersion(radius)
-    for _ in range(HARMONIC_STEPS):
-        step_row, step_col = first_harmonic(radius, turn)
-        new_row, new_col = _within(row + step_row, col + step_col, about_row, about_col, allowed)
-        peaks_around(coef, new_row, new_col, turn, 1, start, stop, samples, radius, height)
-        mean, spread = dispersion(radius)
-        if spread >= least:
+    trials = scout_centres(coef, about_row, about_col, allowed, turn, start, stop, samples)
+    best = math.inf
+    best_row = about_row
+    best_col = about_col
+    for _ in range(STARTS):
+        trial = best_trial(trials)
+        if trials[trial, 0] > NO_CENTRE * (1.0 + HOPELESS) or (
+            trials[trial, 0] > NO_CENTRE and best < math.inf
+        ):
             break
-        moved = math.hypot(new_row - row, new_col - col)
-        row, col, least = new_row, new_col, spread
-        if moved < HARMONIC_DONE * mean:
+        row = trials[trial, 1]
+        col = trials[trial, 2]
+        trials[trial, 0] = math.inf
+        worth = demerit(radius, peaks_around(coef, row, col, turn, 1, start, stop, samples, radius, height))
+        for _ in range(HARMONIC_STEPS):
+            by_row, by_col = first_harmonic(radius, turn)
+            new_row, new_col = _within(row + by_row, col + by_col, about_row, about_col, allowed)
+            limits = peaks_around(coef, new_row, new_col, turn, 1, start, stop, samples, radius, height)
+            new_worth = demerit(radius, limits)
+            if new_worth >= worth:
+                break
+            moved = math.hypot(new_row - row, new_col - col)
+            row, col, worth = new_row, new_col, new_worth
+            if moved < HARMONIC_DONE * dispersion(radius)[0]:
+                break
+        if worth < best * (1.0 - TIE):
+            best, best_row, best_col = worth, row, col
+        if best < FAIR_CIRCLE:
             break
+    peaks_around(coef, best_row, best_col, turn, 1, start, stop, samples, radius, height)
     reach = (stop - start) / (samples.size - 1)
     for _ in range(POLISHES):
-        peaks_around(coef, row, col, turn, 1, start, stop, samples, radius, height)
-        mean, least = dispersion(radius)
-        by_row, by_col = polish(coef, row, col, turn, radius, DIFFERENCE * mean, reach)
-        row, col = _within(row + by_row, col + by_col, about_row, about_col, allowed)
+        mean = dispersion(radius)[0]
+        by_row, by_col = polish(coef, best_row, best_col, turn, radius, DIFFERENCE * mean, reach)
+        row, col = _within(best_row + by_row, best_col + by_col, about_row, about_col, allowed)
+        by_row, by_col = row - best_row, col - best_col
+        follow(coef, best_row, best_col, turn, radius, by_row, by_col, reach, height)
+        radius[:] = height
+        best_row, best_col = row, col
         if math.hypot(by_row, by_col) < CENTRE_TOLERANCE * mean:
             break
-    return row, col
+    return best_row, best_col
 
 
 @kernel()

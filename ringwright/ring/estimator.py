@@ -26,14 +26,19 @@ SAMPLES_PER_FWHM = 4.0  # along a ray; see CONTENDER in the kernels
 PIXELS_PER_FWHM = 3.0  # least that an image must have
 SAME_LENGTH = 1e-9  # relative; two lengths closer than this are meant to be the same
 CENTRE_REACH = 0.25  # [d] how far the centre may lie from the flux centroid
-LIMIT_SHARE = 0.05  # share of the rays that may peak at a limit of the search
 WIDTH_SHARE = 1.0 / 3.0  # share of the rays that may be unresolved before the width is a limit
 DYNAMIC_RANGE = 30.0
 # A ring this much smaller than the resolution cannot be told from a blob whose brightest point is off its
 # centroid.
 SMALLEST_RING = 0.25  # [FWHM]
+# First guesses of the diameter: from the flux centroid, which may lie on a bright knot and see peaks nearby only; then
+# larger ones, until one leads to a ring.
+FIRST_QUANTILE = 0.9
+NEAR_GUESS = 0.1  # a guess this near needs no second search: where peaks jump, searching again would drift
+GUESSES = 5
+NEXT_GUESS = 1.6
 # The limits of the search follow the diameter found; it settles in two rounds where there is a ring.
-ROUNDS = 4
+ROUNDS = 3
 SETTLED = 1e-6
 # Below this a first moment is the sampling error of the spline, and its argument means nothing.
 LEAST_ASYMMETRY = 1e-4
@@ -92,6 +97,11 @@ class _Peaks:
     @property
     def diameter(self) -> float:
         return 2.0 * float(self.radius.mean())
+
+    @property
+    def spread(self) -> float:
+        """σ(r_pk)/⟨r_pk⟩."""
+        return float(self.radius.std() / self.radius.mean())
 
 
 def read_ring(
@@ -212,30 +222,59 @@ class _Search:
         return _Peaks(row, col, radius, height, int(limits))
 
     def first_diameter(self, row: float, col: float) -> float:
-        """A first guess: the median peak from one point out to the end of the field; 0 for none."""
+        """A first guess from one point out to the end of the field; the least that counts where there is none."""
         found = self.peaks(row, col, 0.0, max(self.field)).radius
-        found = found[found > 0.5 * SMALLEST_RING * self.fwhm]
+        least = SMALLEST_RING * self.fwhm
+        found = found[found > 0.5 * least]
         few = found.size < self.turn.shape[1] // 4
-        return 0.0 if few else 2.0 * float(np.median(found))
+        return least if few else 2.0 * float(np.quantile(found, FIRST_QUANTILE))
 
     def settle(self, centre: tuple[float, float] | None) -> _Peaks | None:
-        """Steps 2 and 3: centre and peaks, with limits that agree with the diameter found."""
-        row, col = self.at(*centre) if centre else self.about
-        diameter = self.first_diameter(row, col)
-        peaks = None
+        """Steps 2 and 3: centre and peaks of a ring, or None where no first guess leads to one."""
+        guess = self.first_diameter(*(self.at(*centre) if centre else self.about))
+        for _ in range(GUESSES):
+            peaks = self.settle_from(guess, centre)
+            if peaks is not None:
+                return peaks
+            guess *= NEXT_GUESS
+            if guess > max(self.field):
+                break
+        return None
+
+    def settle_from(self, diameter: float, centre: tuple[float, float] | None) -> _Peaks | None:
+        """The roundest ring whose limits of the search agree with its own diameter, from one first guess."""
+        best = None
         for _ in range(ROUNDS):
-            if diameter < SMALLEST_RING * self.fwhm:
-                return None
             start, stop, _disk = self.lengths.at(diameter)
-            if peaks is None or abs(self.peaks(row, col, start, stop).diameter / diameter - 1.0) > SETTLED:
-                if centre is None:
-                    row, col = self.find_centre(diameter, start, stop)
-                peaks = self.peaks(row, col, start, stop)
-                if abs(peaks.diameter / diameter - 1.0) > SETTLED:
-                    diameter = peaks.diameter
-                    continue
-            break
-        return peaks
+            row, col = self.at(*centre) if centre else self.find_centre(diameter, start, stop)
+            peaks = self.peaks(row, col, start, stop)
+            if peaks.limits > rings.HOPELESS * peaks.radius.size:
+                break
+            found = self.peaks(row, col, *self.lengths.at(peaks.diameter)[:2])
+            agrees = abs(found.diameter / peaks.diameter - 1.0) <= SETTLED
+            if agrees and self.is_ring(found) and (best is None or found.spread < best.spread):
+                best = found
+            if agrees and (centre is not None or self.well_placed(found, diameter)):
+                break
+            diameter = peaks.diameter
+        return best
+
+    def well_placed(self, peaks: _Peaks, guess: float) -> bool:
+        """Whether a centre searched for with a guessed diameter is the one that the diameter found would give."""
+        away = math.hypot(peaks.row - self.about[0], peaks.col - self.about[1])
+        fair = peaks.spread**2 <= rings.FAIR_CIRCLE
+        near = abs(guess / peaks.diameter - 1.0) <= NEAR_GUESS
+        return (fair or near) and away <= CENTRE_REACH * peaks.diameter * (1.0 + NEAR_GUESS)
+
+    def is_ring(self, peaks: _Peaks) -> bool:
+        """Whether peaks surround a darker middle, in (nearly) all directions, in a ring that can be told from a blob."""
+        disk = self.lengths.at(peaks.diameter)[2]
+        middle = rings.disk_mean(self.spline.coefficients, peaks.row, peaks.col, self.turn, disk)
+        return bool(
+            peaks.limits <= rings.LIMIT_SHARE * peaks.radius.size
+            and peaks.height.min() > middle
+            and peaks.diameter > SMALLEST_RING * self.fwhm
+        )
 
     def find_centre(self, diameter: float, start: float, stop: float) -> tuple[float, float]:
         radius, height = np.empty((2, self.turn.shape[1]))
@@ -262,14 +301,10 @@ class _Search:
         return reading
 
     def outcome(self, peaks: _Peaks, dynamic_range: float) -> RingOutcome:
-        disk = self.lengths.at(peaks.diameter)[2]
-        middle = rings.disk_mean(self.spline.coefficients, peaks.row, peaks.col, self.turn, disk)
-        faintest = float(peaks.height.min())
-        if peaks.limits > LIMIT_SHARE * peaks.radius.size or not faintest > middle:
-            return RingOutcome.NO_RING
         if self.leaves_field(peaks):
             return RingOutcome.OFF_FIELD
-        return RingOutcome.OPEN if faintest * dynamic_range < peaks.height.max() else RingOutcome.RING
+        closed = peaks.height.min() * dynamic_range >= peaks.height.max()
+        return RingOutcome.RING if closed else RingOutcome.OPEN
 
     def leaves_field(self, peaks: _Peaks) -> bool:
         reach = 0.5 * peaks.diameter + self.fwhm

@@ -153,3 +153,28 @@ def test_the_words_name_units_and_the_usual_caution(path):
     assert "There is no ring at this resolution" in words
     assert "1 of 2 images have a diameter" in words
     assert "is not the edge of the shadow" in words
+
+
+def test_our_own_product_is_measured_as_the_fits_image_of_it(tmp_path):
+    data = ring_image(asymmetry=0.2, orientation=1.0)
+    none = np.zeros(1)
+    image = rw.Image(
+        name="invented",
+        intensity=data[None],
+        pixel_m=0.25,
+        theta_g_uas=4.0,
+        frequency_hz=230e9,
+        position_angle=0.0,
+        in_jansky=True,
+        flux=none,
+        flux_in_field=none,
+        band_width=none,
+    )
+    image.save(tmp_path / "one.h5")
+    image.to_fits(tmp_path / "one.fits")
+    of_product, of_fits = (
+        rw.measure(tmp_path / name, resolution="20 uas") for name in ("one.h5", "one.fits")
+    )
+    assert of_product.name == "invented"
+    assert of_product.diameter.value == pytest.approx(of_fits.diameter.value, rel=1e-6)
+    assert of_product.orientation.value == pytest.approx(of_fits.orientation.value, rel=1e-4)

@@ -1,0 +1,197 @@
+"""The keys of a scene file: names, types, units, defaults and single-value limits, as pydantic models.
+
+Quantities stand as text with a unit and come out as plain numbers (M, rad, µas, Mpc, solar masses, Hz, Jy). Unknown keys, missing
+units and values of another type are refused; what several keys must satisfy together is checked in `scene.py`.
+"""
+
+from __future__ import annotations
+
+from typing import Annotated, Any, Literal
+
+from pydantic import BaseModel, BeforeValidator, ConfigDict, Field, WithJsonSchema
+
+from ringwright.units import KINDS, parse_given
+
+FEWEST_PIXELS, MOST_PIXELS = 8, 16384
+MOST_ORDERS = 6
+
+
+def quantity(kind: str, low: float | None = None, high: float | None = None, strict: bool = False) -> Any:
+    """A pydantic type for a quantity of one kind, with limits in the unit that it is kept in."""
+    unit, example = KINDS[kind]
+
+    def read(value: object) -> float:
+        number = parse_given(value, kind)
+        shown, scale = ("deg", 57.29577951308232) if unit == "rad" else (unit, 1.0)
+        if low is not None and (number < low or (strict and number == low)):
+            limit = "more than" if strict else "at least"
+            raise ValueError(f"'{value}' is too small; {limit} {low * scale:g} {shown} is accepted")
+        if high is not None and number > high:
+            raise ValueError(f"'{value}' is too large; at most {high * scale:g} {shown} is accepted")
+        return number
+
+    schema = {"type": "string", "description": f"{kind}: a number and a unit", "examples": [example]}
+    return Annotated[float, BeforeValidator(read), WithJsonSchema(schema)]
+
+
+def _read_field(value: object) -> tuple[str, float]:
+    """Side of the image: an angle on the sky, or a length in M."""
+    kind = "length" if isinstance(value, str) and value.strip().endswith("M") else "sky angle"
+    number = parse_given(value, kind)
+    if number <= 0.0:
+        raise ValueError(f"'{value}' is too small; a field has a positive side, like \"170 uas\" or \"40 M\"")
+    return KINDS[kind][0], number
+
+
+PI = 3.141592653589793
+Inclination = quantity("angle", 0.0, PI * (1.0 + 1e-15))
+Angle = quantity("angle")
+Declination = quantity("angle", -PI / 2, PI / 2)
+SkyAngle = quantity("sky angle", 0.0, strict=True)
+Mass = quantity("mass", 0.0, strict=True)
+Distance = quantity("distance", 0.0, strict=True)
+Frequency = quantity("frequency", 0.0, strict=True)
+FluxDensity = quantity("flux density", 0.0, strict=True)
+Radius = quantity("length", 2.0)
+Length = quantity("length", 0.0)
+Width = quantity("length", 0.0, strict=True)
+Side = Annotated[
+    tuple[str, float],
+    BeforeValidator(_read_field),
+    WithJsonSchema({"type": "string", "examples": ["170 uas", "40 M"]}),
+]
+
+
+class Strict(BaseModel):
+    """A table of which every key is known."""
+
+    model_config = ConfigDict(
+        extra="forbid", strict=True, frozen=True, allow_inf_nan=False, validate_default=True
+    )
+
+
+class Hole(Strict):
+    """The hole: mass and distance, or theta_g, or neither where M suffices."""
+
+    spacetime: str = "schwarzschild"
+    mass: Mass | None = None
+    distance: Distance | None = None
+    theta_g: SkyAngle | None = None
+
+
+class View(Strict):
+    """From where, how wide and how fine."""
+
+    inclination: Inclination
+    position_angle: Angle = "0 deg"  # type: ignore[assignment]
+    frequency: Frequency | None = None
+    field: Side
+    pixels: Annotated[int, Field(ge=FEWEST_PIXELS, le=MOST_PIXELS)]
+    orders: Annotated[int, Field(ge=1, le=MOST_ORDERS)] = 3
+
+
+class Source(Strict):
+    """What is known of the source on the sky."""
+
+    total_flux: FluxDensity | None = None
+    right_ascension: Angle | None = None
+    declination: Declination | None = None
+
+
+class PowerLawProfile(Strict):
+    """Brightness falls as r^-slope between two edges."""
+
+    kind: Literal["power-law"]
+    inner: Radius
+    outer: Radius
+    slope: float
+    edge_width: Length = "0 M"  # type: ignore[assignment]
+
+
+class GaussianRingProfile(Strict):
+    """A Gaussian in radius; width is its FWHM."""
+
+    kind: Literal["gaussian-ring"]
+    radius: Radius
+    width: Width
+
+
+class PageThorneProfile(Strict):
+    """Bolometric flux of a thin accretion disk (Page & Thorne 1974)."""
+
+    kind: Literal["page-thorne"]
+    outer: Radius
+
+
+class TableProfile(Strict):
+    """Brightness against radius from a file beside the scene."""
+
+    kind: Literal["table"]
+    file: str
+
+
+class StaticFlow(Strict):
+    """Gas at rest."""
+
+    kind: Literal["static"]
+
+
+class CircularFlow(Strict):
+    """Circular orbits, and the plunge inside the innermost stable one (Cunningham 1975)."""
+
+    kind: Literal["circular"]
+
+
+class BlendFlow(Strict):
+    """Slower than circular in turning, on the way to free fall in falling."""
+
+    kind: Literal["blend"]
+    orbit_fraction: Annotated[float, Field(ge=0.0, le=1.0)]
+    fall_fraction: Annotated[float, Field(ge=0.0, le=1.0)]
+
+
+class RadialFallFlow(Strict):
+    """Free fall from rest far away."""
+
+    kind: Literal["radial-fall"]
+
+
+AnyProfile = Annotated[
+    PowerLawProfile | GaussianRingProfile | PageThorneProfile | TableProfile, Field(discriminator="kind")
+]
+AnyFlow = Annotated[StaticFlow | CircularFlow | BlendFlow | RadialFallFlow, Field(discriminator="kind")]
+Strength = Annotated[float, Field(ge=0.0)]
+
+
+class ThinDiskEmitter(Strict):
+    """A thin disk in the equatorial plane."""
+
+    kind: Literal["thin-disk"]
+    strength: Strength = 1.0
+    spectral_index: float = 0.0
+    opaque: bool = False
+    slant: bool = False
+    profile: AnyProfile
+    flow: AnyFlow
+
+
+class BackdropEmitter(Strict):
+    """Uniform light from behind, far away."""
+
+    kind: Literal["backdrop"]
+    strength: Strength = 1.0
+
+
+AnyEmitter = Annotated[ThinDiskEmitter | BackdropEmitter, Field(discriminator="kind")]
+
+
+class SceneFile(Strict):
+    """A whole scene file."""
+
+    name: Annotated[str, Field(pattern=r"^[A-Za-z0-9][A-Za-z0-9._-]*$")]
+    hole: Hole = Field(default_factory=Hole)
+    view: View
+    source: Source = Field(default_factory=Source)
+    emitter: Annotated[list[AnyEmitter], Field(min_length=1)]
+
+

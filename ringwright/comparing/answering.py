@@ -17,7 +17,7 @@ from numpy.typing import NDArray
 from ringwright.comparing import cautions, notes
 from ringwright.comparing.budget import Budget, budget
 from ringwright.comparing.distributions import LogDensity
-from ringwright.comparing.inputs import UAS_MPC_PER_SOLAR_MASS, Observed
+from ringwright.comparing.inputs import Observed
 from ringwright.comparing.likelihood import Grid, Posterior, merge, run, support
 from ringwright.comparing.priors import FlatPrior, MassPrior, Replaced, ScalePrior, scale_prior, scene_weights
 from ringwright.comparing.results import (
@@ -32,6 +32,7 @@ from ringwright.comparing.results import (
 )
 from ringwright.errors import InputError
 from ringwright.scanning.table import ScanParameter, ScanTable
+from ringwright.units import THETA_G_OF_SUN
 
 if TYPE_CHECKING:
     from ringwright.observation import Observation
@@ -241,7 +242,16 @@ def _curves(
     mass_prior = prior and _mass(observed, prior)
     if isinstance(scale, MassPrior):
         mass_prior = LogDensity.of(scale.mass)
-    return Curves(theta, both, prior, _mass(observed, theta), mass_both, mass_prior, ring.factor_density())
+    return Curves(
+        theta_g=theta,
+        theta_g_combined=both,
+        theta_g_prior=prior,
+        mass=_mass(observed, theta),
+        mass_combined=mass_both,
+        mass_prior=mass_prior,
+        factor=ring.factor_density(),
+        over_prior=_over_prior(theta, prior),
+    )
 
 
 def _mass(observed: Observed, theta: LogDensity) -> LogDensity | None:
@@ -249,15 +259,22 @@ def _mass(observed: Observed, theta: LogDensity) -> LogDensity | None:
     if observed.distance is None:
         return None
     distances, weights = observed.distance.nodes()
-    return theta.times(distances / UAS_MPC_PER_SOLAR_MASS, weights)
+    return theta.times(distances / THETA_G_OF_SUN, weights)
 
 
 def _deviation(curves: Curves, critical: float) -> Estimate | None:
     """δ = d_c/(2√27 θ_g,prior) − 1, the prior taken as an independent measurement."""
-    if curves.theta_g is None or curves.theta_g_prior is None:
+    if curves.over_prior is None:
         return None
-    points, weights = curves.theta_g_prior.nodes()
-    return Estimate.of(curves.theta_g.times(1.0 / points, weights), "", critical / SCHWARZSCHILD_CURVE, -1.0)
+    return Estimate.of(curves.over_prior, "", critical / SCHWARZSCHILD_CURVE, -1.0)
+
+
+def _over_prior(theta: LogDensity, prior: LogDensity | None) -> LogDensity | None:
+    """θ_g of the ring alone over that of the prior, as two independent measurements."""
+    if prior is None:
+        return None
+    points, weights = prior.nodes()
+    return theta.times(1.0 / points, weights)
 
 
 def _budget(observed: Observed, ring: Posterior, parameters: tuple[ScanParameter, ...]) -> Budget:

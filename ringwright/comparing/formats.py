@@ -33,11 +33,16 @@ def ten_to(exponent: int) -> str:
     return "10" + str(exponent).translate(SUPERSCRIPTS)
 
 
+def number(value: float, places: int) -> str:
+    """A number with so many decimals and a true minus sign."""
+    return f"{value:.{places}f}".replace("-", "−")
+
+
 def asymmetric(estimate: Estimate, scale: float = 1.0) -> str:
     """Median with the distances to the ends of the 68 % interval, such as "3.82 +0.35 −0.31"."""
     plus, minus = estimate.plus / scale, estimate.minus / scale
     places = decimals(max(plus, minus))
-    return f"{estimate.number / scale:.{places}f} +{plus:.{places}f} −{minus:.{places}f}"
+    return f"{number(estimate.number / scale, places)} +{plus:.{places}f} −{minus:.{places}f}"
 
 
 def between(estimate: Estimate, scale: float = 1.0) -> str:
@@ -46,7 +51,7 @@ def between(estimate: Estimate, scale: float = 1.0) -> str:
     assert estimate.high95 is not None
     low, high = float(estimate.low95.value) / scale, float(estimate.high95.value) / scale
     places = decimals(max(estimate.plus, estimate.minus) / scale)
-    return f"{low:.{places}f} to {high:.{places}f}"
+    return f"{number(low, places)} to {number(high, places)}"
 
 
 def mass(estimate: Estimate) -> str:
@@ -55,14 +60,14 @@ def mass(estimate: Estimate) -> str:
     return f"({asymmetric(estimate, 10.0**exponent)}) × {ten_to(exponent)} M☉"
 
 
-def published(number: TwoPiece, unit: str = "") -> str:
+def published(given: TwoPiece, unit: str = "") -> str:
     """A number that was given, such as "16.8 +0.8 −0.7 Mpc"; masses (`M☉`) with a power of ten."""
     if unit == "M☉":
-        exponent = power(number.mode)
-        scaled = TwoPiece(*(part / 10.0**exponent for part in (number.mode, number.plus, number.minus)))
+        exponent = power(given.mode)
+        scaled = TwoPiece(*(part / 10.0**exponent for part in (given.mode, given.plus, given.minus)))
         return f"({published(scaled)}) × {ten_to(exponent)} M☉"
-    if number.exact:
-        return f"{number.mode:.4g} {unit}".strip() + ", held exact"
-    if number.plus == number.minus:
-        return f"{number.mode:.4g} ± {number.plus:.3g} {unit}".strip()
-    return f"{number.mode:.4g} +{number.plus:.3g} −{number.minus:.3g} {unit}".strip()
+    if given.exact:
+        return f"{given.mode:.4g} {unit}".strip() + ", held exact"
+    if given.plus == given.minus:
+        return f"{given.mode:.4g} ± {given.plus:.3g} {unit}".strip()
+    return f"{given.mode:.4g} +{given.plus:.3g} −{given.minus:.3g} {unit}".strip()

@@ -10,20 +10,12 @@ import math
 from dataclasses import dataclass, field
 
 import numpy as np
-from astropy import constants
-from astropy import units as u
 from numpy.typing import NDArray
 
 from ringwright.comparing.distributions import TwoPiece
 from ringwright.errors import InputError
 
 Array = NDArray[np.float64]
-
-# θ_g [µas] of one solar mass at one megaparsec; GM☉ is the IAU 2015 nominal value (resolution B3).
-GM_SUN = 1.3271244e20 * u.m**3 / u.s**2
-UAS_MPC_PER_SOLAR_MASS = float((GM_SUN / constants.c**2 / u.Mpc).to(u.dimensionless_unscaled)) * u.rad.to(
-    u.uas
-)
 
 # The prior on θ_g reaches from d̂/30 to d̂/4: no scene of a ring reads a conversion factor outside 4 to 30.
 LARGEST_FACTOR, SMALLEST_FACTOR = 30.0, 4.0

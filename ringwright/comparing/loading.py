@@ -8,7 +8,6 @@ from __future__ import annotations
 
 from os import PathLike
 
-from ringwright.comparing.inputs import Observed
 from ringwright.scanning.table import ScanTable
 
 

@@ -14,10 +14,11 @@ import numpy as np
 from numpy.typing import NDArray
 
 from ringwright.comparing.distributions import LogDensity, TwoPiece, mixture
-from ringwright.comparing.inputs import UAS_MPC_PER_SOLAR_MASS, Observed
+from ringwright.comparing.inputs import Observed
 from ringwright.comparing.likelihood import Grid
 from ringwright.errors import InputError
 from ringwright.scanning.table import ScanParameter, ScanTable
+from ringwright.units import THETA_G_OF_SUN
 
 Array = NDArray[np.float64]
 
@@ -83,10 +84,10 @@ class MassPrior:
         """
         if self.over_mass:
             nodes, weight = self.mass.nodes()
-            distance = UAS_MPC_PER_SOLAR_MASS * nodes / theta[:, None]
+            distance = THETA_G_OF_SUN * nodes / theta[:, None]
             return weight * self.distance.density(distance) * distance, nodes
         nodes, weight = self.distance.nodes()
-        mass = theta[:, None] * nodes / UAS_MPC_PER_SOLAR_MASS
+        mass = theta[:, None] * nodes / THETA_G_OF_SUN
         return weight * self.mass.density(mass) * mass, nodes
 
     def __call__(self, theta: Array) -> Array:
@@ -97,12 +98,12 @@ class MassPrior:
         (light, heavy), (near, far) = self.mass.span(), self.distance.span()
         if self.distance.exact:
             near = far = self.distance.mode
-        return UAS_MPC_PER_SOLAR_MASS * light / far, UAS_MPC_PER_SOLAR_MASS * heavy / near
+        return THETA_G_OF_SUN * light / far, THETA_G_OF_SUN * heavy / near
 
     def of_theta_g(self) -> LogDensity:
         """The prior as a distribution of θ_g, before any ring."""
         distances, weight = self.distance.nodes()
-        return LogDensity.of(self.mass).times(UAS_MPC_PER_SOLAR_MASS / distances, weight)
+        return LogDensity.of(self.mass).times(THETA_G_OF_SUN / distances, weight)
 
     def mass_posterior(self, grid: Grid, cells: Array) -> LogDensity:
         """Posterior of the mass, from the posterior of θ_g on a grid: the joint one with the distance
@@ -121,7 +122,7 @@ class MassPrior:
         weight = joint.sum(axis=0) / joint.sum()
         running = np.concatenate([np.zeros((1, nodes.size)), np.cumsum(joint, axis=0)])
         parts = [(w, running[:, j] / (running[-1, j] or 1.0)) for j, w in enumerate(weight)]
-        return mixture(grid.edges, parts, np.log(nodes / UAS_MPC_PER_SOLAR_MASS))
+        return mixture(grid.edges, parts, np.log(nodes / THETA_G_OF_SUN))
 
 
 ScalePrior = AnglePrior | MassPrior

@@ -124,6 +124,7 @@ class Curves:
     mass_combined: LogDensity | None = None
     mass_prior: LogDensity | None = None
     factor: LogDensity | None = None
+    over_prior: LogDensity | None = None  # θ_g of the ring alone over that of the prior
 
 
 @dataclass(frozen=True)
@@ -148,10 +149,21 @@ class Answer:
             "combined": None if self.combined is None else self.combined.to_json(),
             "conversion_factor": self.conversion_factor.to_json(),
             "critical_curve_diameter": self.critical_curve_diameter.to_json(),
-            "deviation": None if self.deviation is None else self.deviation.to_json(),
+            "deviation": None if self.deviation is None else self._deviation(),
             "budget": None if self.budget is None else self.budget.to_json(),
             "scenes": self.scenes.to_json(),
         }
+
+    def _deviation(self) -> dict[str, Any]:
+        assert self.deviation is not None
+        below = self.probability_below_prior
+        return self.deviation.to_json() | ({} if below is None else {"probability_below_prior": below})
+
+    @property
+    def probability_below_prior(self) -> float | None:
+        """Probability that θ_g of the ring alone is smaller than that of the prior: a tail where they disagree."""
+        ratio = self.curves.over_prior
+        return None if ratio is None else ratio.probability_below(1.0)
 
 
 @dataclass(frozen=True)

@@ -7,11 +7,14 @@ around the median mass. What could mislead stands in the same text.
 from __future__ import annotations
 
 import math
+import textwrap
 
 from ringwright.comparing import formats
 from ringwright.comparing.budget import Budget
 from ringwright.comparing.inputs import Observed
 from ringwright.comparing.results import Answer, Comparison, Estimate, FamilyAnswer
+
+WIDTH = 110  # characters of a line of running text
 
 
 def summary(comparison: Comparison) -> str:
@@ -117,10 +120,11 @@ def _combined(answer: Answer) -> list[str]:
     if mass.value is not None:
         line += f"; M = {formats.mass(mass)}"
     lines = [line]
-    if answer.deviation is not None:
+    if answer.deviation is not None and answer.probability_below_prior is not None:
+        delta = f"{formats.asymmetric(answer.deviation)} (95 %: {formats.between(answer.deviation)})"
         lines.append(
-            f"  Ring only against that prior: δ = {formats.asymmetric(answer.deviation)} (95 %: "
-            f"{formats.between(answer.deviation)})"
+            f"  Ring only against that prior: δ = {delta}; "
+            f"the ring asks for less than the prior with probability {answer.probability_below_prior:.3f}"
         )
     return lines
 
@@ -135,13 +139,21 @@ def _budget(budget: Budget | None) -> list[str]:
     lines += [f"    {name:<12} {_share(value, budget.total)}" for name, value in rows]
     lines += [
         f"      {name:<28} {100 * value / budget.total:5.1f} % of the variance"
-        for name, value in budget.parts.items()
+        for name, value in _named(budget.parts).items()
     ]
     said = "at least twice" if budget.emission_dominates else f"{budget.ratio:.2f} times"
     lines.append(
         f"    Emission contributes {said} the measurement's standard deviation (ratio {budget.ratio:.2f})."
     )
     return lines
+
+
+def _named(parts: dict[str, float]) -> dict[str, float]:
+    """What is left beside `family` lies within the families."""
+    return {
+        "within the families" if name == "joint" and "family" in parts else name: parts[name]
+        for name in parts
+    }
 
 
 def _share(variance: float, total: float) -> str:
@@ -168,4 +180,5 @@ def _warnings(comparison: Comparison) -> str:
 
 
 def _list(title: str, items: tuple[str, ...]) -> str:
-    return "\n".join([title, *(f"  - {item}" for item in items)]) if items else ""
+    lines = [textwrap.fill(item, WIDTH, initial_indent="  - ", subsequent_indent="    ") for item in items]
+    return "\n".join([title, *lines]) if lines else ""

@@ -14,8 +14,9 @@ from synthetic_scans import BIAS, factor, family_table, parameter, table_of
 from ringwright.comparing.answering import compare_numbers
 from ringwright.comparing.distributions import LogDensity, TwoPiece
 from ringwright.comparing.formats import asymmetric
-from ringwright.comparing.inputs import UAS_MPC_PER_SOLAR_MASS, Observed
+from ringwright.comparing.inputs import Observed
 from ringwright.ring.outcomes import RingOutcome
+from ringwright.units import THETA_G_OF_SUN
 
 # Quantiles come from cells of a fortieth of a standard deviation, read linearly.
 QUANTILE = 1e-3  # of a standard deviation
@@ -90,7 +91,7 @@ def test_the_mass_without_a_prior_is_theta_g_times_an_independent_distance():
     half = np.abs(rng.standard_normal(theta.size))
     above = rng.random(theta.size) < 0.8 / 1.5
     distance = np.where(above, 16.8 + 0.8 * half, 16.8 - 0.7 * half)
-    mass = theta * distance / UAS_MPC_PER_SOLAR_MASS
+    mass = theta * distance / THETA_G_OF_SUN
     order = np.argsort(mass)
     running = np.cumsum(1.0 / theta[order]) / np.sum(1.0 / theta)
     for name, p in (("low68", 0.16), ("value", 0.5), ("high68", 0.84)):
@@ -100,8 +101,8 @@ def test_the_mass_without_a_prior_is_theta_g_times_an_independent_distance():
 
 def test_one_solar_mass_at_one_megaparsec_has_the_published_angle():
     # CHECK-VALUES, section 8: 6.5e9 M☉ at 16.8 Mpc → 3.81899 µas (CHK; GM☉ of IAU 2015).
-    assert pytest.approx(3.81899, abs=5e-6) == 6.5e9 / 16.8 * UAS_MPC_PER_SOLAR_MASS
-    assert pytest.approx(5.12433, abs=5e-6) == 4.297e6 / 8.277e-3 * UAS_MPC_PER_SOLAR_MASS
+    assert pytest.approx(3.81899, abs=5e-6) == 6.5e9 / 16.8 * THETA_G_OF_SUN
+    assert pytest.approx(5.12433, abs=5e-6) == 4.297e6 / 8.277e-3 * THETA_G_OF_SUN
 
 
 @pytest.mark.parametrize("errors", [(1.2e9, 0.8), (0.15e9, 1.5), (0.7e9, 0.05)])
@@ -111,7 +112,7 @@ def test_a_prior_on_the_mass_is_marginalised_jointly_with_the_distance(errors):
     answer = compare_numbers(observed(mass=mass, distance=distance), (table_of([11.0]),))
     d = np.linspace(16.8 - 7 * errors[1], 16.8 + 7 * errors[1], 1201)
     theta = np.linspace(2.0, 6.0, 4001)
-    m = theta[:, None] * d / UAS_MPC_PER_SOLAR_MASS
+    m = theta[:, None] * d / THETA_G_OF_SUN
     joint = stats.norm.pdf(11.0 * theta, 42.0, 3.0)[:, None] * stats.norm.pdf(m, 5.5e9, errors[0])
     joint *= stats.norm.pdf(d, 16.8, errors[1]) * d
     marginal = integrate.simpson(joint, x=d, axis=1)
@@ -125,7 +126,7 @@ def test_a_prior_on_the_mass_is_marginalised_jointly_with_the_distance(errors):
     # The mass itself: sum the joint density below a mass.
     for name, p in (("low68", 0.16), ("value", 0.5), ("high68", 0.84)):
         at = getattr(answer.combined.mass, name).to_value("solMass")
-        limit = at * UAS_MPC_PER_SOLAR_MASS / d
+        limit = at * THETA_G_OF_SUN / d
         column = integrate.cumulative_simpson(joint, x=theta, axis=0, initial=0.0)
         below = [np.interp(limit[j], theta, column[:, j]) for j in range(d.size)]
         share = integrate.simpson(below, x=d) / integrate.simpson(column[-1], x=d)

@@ -11,7 +11,7 @@ from pathlib import Path
 import pytest
 
 import ringwright as rw
-from ringwright.comparing.inputs import UAS_MPC_PER_SOLAR_MASS
+from ringwright.units import THETA_G_OF_SUN
 
 pytestmark = pytest.mark.xdist_group("published-masses")
 
@@ -114,6 +114,6 @@ def test_both_stellar_priors_of_sgr_a_lie_within_the_ring(tmp_path_factory):
 
 def test_the_published_masses_and_angles_agree_with_each_other():
     # 6.5e9 at 16.8 Mpc → 3.819 µas inside 3.8 ± 0.4 (EHT M87* VI, ABS); 2√27 θ_g = 39.688 µas (CHK).
-    theta = M87_MASS / 16.8 * UAS_MPC_PER_SOLAR_MASS
+    theta = M87_MASS / 16.8 * THETA_G_OF_SUN
     assert theta == pytest.approx(3.8, abs=0.4)
     assert 2 * 27**0.5 * theta == pytest.approx(39.688, abs=1e-3)

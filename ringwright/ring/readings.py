@@ -49,7 +49,7 @@ class Readings:
     outcome : array of int8
         `RingOutcome`. Interpolate linearly between nodes of one outcome, never across a change.
     halfway_error : float
-        Largest relative error of the interpolated diameter half-way between two nodes of one outcome.
+        Largest relative error of the interpolated diameter half-way between two nodes of one closed ring.
     finest : float
         Three pixels: the least resolution that the image allows.
     """
@@ -126,7 +126,8 @@ class _Table:
     def refine(self, low: float, high: float) -> None:
         """Halve an interval until a straight line serves, or the interval is as short as it may be."""
         left, right = self.read(low), self.read(high)
-        if left.outcome == right.outcome and (not left.outcome.has_diameter or high <= self.finest):
+        closed = left.outcome <= RingOutcome.WIDTH_LIMIT  # on arcs a diameter means nothing worth a node
+        if left.outcome == right.outcome and (not closed or high <= self.finest):
             return
         shortest = high - low <= (LEAST_STEP if high > FIRST_STEP else LEAST_STEP_BELOW_ONE)
         if left.outcome != right.outcome and shortest:

@@ -14,12 +14,11 @@ from typing import Any
 import numpy as np
 
 from raytrace.kernels.compiling import kernel
+from ringwright.kernels.splines import climb, value
 
 # A sample a quarter of the FWHM apart misses at most (1/8)²·4 ln2 = 4.3 % of a peak: every local maximum
 # within 10 % of the highest sample is refined before the highest peak is named.
 CONTENDER = 0.90
-NEWTON_STEPS = 12
-NEWTON_TOLERANCE = 1e-11  # [samples]; far below any reading, so that machines agree
 BISECTIONS = 36
 # Trial centres: the flux centroid and this many hexagonal rings around it, each judged on every fifth ray.
 SCOUT_RINGS = 3
@@ -35,89 +34,14 @@ DIFFERENCE = 1e-4
 POLISHES = 5
 CENTRE_TOLERANCE = 1e-6  # [mean radius]; moves a diameter by less than that times the scatter
 HALVINGS = 4
-# A trial centre with more than this share of its rays at a limit has no ring around it (step 7); between two of those the
-# one with fewer is nearer to a ring. Without this a bright knot would win: seen from its top every ray peaks at the start.
+# A trial centre with more than this share of its rays at a limit has no ring around it (step 7); between two
+# of those the one with fewer is nearer to a ring. Without this a bright knot would win: seen from its top
+# every ray peaks at the start.
 LIMIT_SHARE = 0.05
 NO_CENTRE = 1e3  # far above any dispersion
 HOPELESS = 0.5  # share of rays at a limit from which no step leads to a ring
 RING_RADII = 16  # radii between the two edges of the ring for the azimuthal moments
 DISK_RADII = 6  # equal-area annuli of the central disk
-
-
-@kernel()
-def value(coef: Any, row: float, col: float) -> float:
-    """The spline at one point; nothing shines outside the grid."""
-    i = math.floor(row)
-    j = math.floor(col)
-    if i < 1 or j < 1 or i > coef.shape[0] - 3 or j > coef.shape[1] - 3:
-        return 0.0
-    u = row - i
-    v = col - j
-    a0 = (1.0 - u) ** 3
-    a1 = (3.0 * u - 6.0) * u * u + 4.0
-    a3 = u * u * u
-    a2 = 6.0 - a0 - a1 - a3
-    b0 = (1.0 - v) ** 3
-    b1 = (3.0 * v - 6.0) * v * v + 4.0
-    b3 = v * v * v
-    b2 = 6.0 - b0 - b1 - b3
-    j0 = j - 1
-    s0 = b0 * coef[i - 1, j0] + b1 * coef[i - 1, j] + b2 * coef[i - 1, j + 1] + b3 * coef[i - 1, j + 2]
-    s1 = b0 * coef[i, j0] + b1 * coef[i, j] + b2 * coef[i, j + 1] + b3 * coef[i, j + 2]
-    s2 = b0 * coef[i + 1, j0] + b1 * coef[i + 1, j] + b2 * coef[i + 1, j + 1] + b3 * coef[i + 1, j + 2]
-    s3 = b0 * coef[i + 2, j0] + b1 * coef[i + 2, j] + b2 * coef[i + 2, j + 1] + b3 * coef[i + 2, j + 2]
-    return (a0 * s0 + a1 * s1 + a2 * s2 + a3 * s3) / 36.0
-
-
-@kernel()
-def bend(coef: Any, row: float, col: float, drow: float, dcol: float) -> tuple[float, float]:
-    """First and second derivative of the spline along the direction (drow, dcol)."""
-    i = math.floor(row)
-    j = math.floor(col)
-    if i < 1 or j < 1 or i > coef.shape[0] - 3 or j > coef.shape[1] - 3:
-        return 0.0, 0.0
-    u = row - i
-    v = col - j
-    a = ((1.0 - u) ** 3, (3.0 * u - 6.0) * u * u + 4.0, (3.0 - 3.0 * u) * u * u + 3.0 * u + 1.0, u**3)
-    b = ((1.0 - v) ** 3, (3.0 * v - 6.0) * v * v + 4.0, (3.0 - 3.0 * v) * v * v + 3.0 * v + 1.0, v**3)
-    a1 = (-3.0 * (1.0 - u) ** 2, (9.0 * u - 12.0) * u, (6.0 - 9.0 * u) * u + 3.0, 3.0 * u * u)
-    b1 = (-3.0 * (1.0 - v) ** 2, (9.0 * v - 12.0) * v, (6.0 - 9.0 * v) * v + 3.0, 3.0 * v * v)
-    a2 = (6.0 - 6.0 * u, 18.0 * u - 12.0, 6.0 - 18.0 * u, 6.0 * u)
-    b2 = (6.0 - 6.0 * v, 18.0 * v - 12.0, 6.0 - 18.0 * v, 6.0 * v)
-    first = 0.0
-    second = 0.0
-    for m in range(4):
-        flat = 0.0
-        slope = 0.0
-        curve = 0.0
-        for n in range(4):
-            c = coef[i - 1 + m, j - 1 + n]
-            flat += b[n] * c
-            slope += b1[n] * c
-            curve += b2[n] * c
-        first += drow * a1[m] * flat + dcol * a[m] * slope
-        second += drow * drow * a2[m] * flat + 2.0 * drow * dcol * a1[m] * slope + dcol * dcol * a[m] * curve
-    return first / 36.0, second / 36.0
-
-
-@kernel()
-def climb(
-    coef: Any, row: float, col: float, drow: float, dcol: float, low: float, high: float, r: float
-) -> float:
-    """Radius of the maximum between `low` and `high`: Newton's method inside a shrinking bracket."""
-    for _ in range(NEWTON_STEPS):
-        first, second = bend(coef, row + r * drow, col + r * dcol, drow, dcol)
-        if first > 0.0:
-            low = r
-        else:
-            high = r
-        step = -first / second if second < 0.0 else math.inf
-        if abs(step) < NEWTON_TOLERANCE:
-            return r + step
-        if not (low < r + step < high):
-            step = 0.5 * (low + high) - r
-        r += step
-    return r
 
 
 @kernel()
@@ -156,19 +80,19 @@ def peaks_around(
     row: float,
     col: float,
     turn: Any,
-    stride: int,
     start: float,
     stop: float,
     samples: Any,
     radius: Any,
     height: Any,
 ) -> int:
-    """Peaks along every `stride`-th ray of `turn` (2, rays) = (cos, -sin); returns how many are limits."""
+    """Peaks along as many rays of `turn` (2, rays) = (cos, -sin) as `radius` holds; returns how many are limits."""
+    stride = turn.shape[1] // radius.size
     limits = 0
-    for k in range(0, turn.shape[1], stride):
-        r, h, at_limit = find_peak(coef, row, col, turn[0, k], turn[1, k], start, stop, samples)
-        radius[k // stride] = r
-        height[k // stride] = h
+    for k in range(radius.size):
+        drow = turn[0, k * stride]
+        dcol = turn[1, k * stride]
+        radius[k], height[k], at_limit = find_peak(coef, row, col, drow, dcol, start, stop, samples)
         limits += at_limit
     return limits
 
@@ -281,7 +205,7 @@ def scout_centres(
     samples: Any,
 ) -> Any:
     """Trial centres within `reach` of a point, each as (demerit, row, col), judged on every fifth ray."""
-    few = np.empty((turn.shape[1] + COARSE_STRIDE - 1) // COARSE_STRIDE)
+    few = np.empty(turn.shape[1] // COARSE_STRIDE)
     heights = np.empty(few.size)
     trials = np.empty((1 + SCOUT_RINGS * (SCOUT_RINGS + 1) * 3, 3))
     trial = 0
@@ -290,7 +214,7 @@ def scout_centres(
             angle = k * math.pi / (3.0 * max(1, ring))
             row = about_row + reach * ring / SCOUT_RINGS * math.cos(angle)
             col = about_col - reach * ring / SCOUT_RINGS * math.sin(angle)
-            limits = peaks_around(coef, row, col, turn, COARSE_STRIDE, start, stop, samples, few, heights)
+            limits = peaks_around(coef, row, col, turn, start, stop, samples, few, heights)
             trials[trial, 0] = demerit(few, limits)
             trials[trial, 1] = row
             trials[trial, 2] = col
@@ -338,11 +262,11 @@ def find_centre(
         row = trials[trial, 1]
         col = trials[trial, 2]
         trials[trial, 0] = math.inf
-        worth = demerit(radius, peaks_around(coef, row, col, turn, 1, start, stop, samples, radius, height))
+        worth = demerit(radius, peaks_around(coef, row, col, turn, start, stop, samples, radius, height))
         for _ in range(HARMONIC_STEPS):
             by_row, by_col = first_harmonic(radius, turn)
             new_row, new_col = _within(row + by_row, col + by_col, about_row, about_col, allowed)
-            limits = peaks_around(coef, new_row, new_col, turn, 1, start, stop, samples, radius, height)
+            limits = peaks_around(coef, new_row, new_col, turn, start, stop, samples, radius, height)
             new_worth = demerit(radius, limits)
             if new_worth >= worth:
                 break
@@ -354,7 +278,7 @@ def find_centre(
             best, best_row, best_col = worth, row, col
         if best < FAIR_CIRCLE:
             break
-    peaks_around(coef, best_row, best_col, turn, 1, start, stop, samples, radius, height)
+    peaks_around(coef, best_row, best_col, turn, start, stop, samples, radius, height)
     reach = (stop - start) / (samples.size - 1)
     for _ in range(POLISHES):
         mean = dispersion(radius)[0]

@@ -212,7 +212,6 @@ class _Search:
             row,
             col,
             self.turn,
-            1,
             start,
             stop,
             self.samples(start, stop),

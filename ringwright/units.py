@@ -76,7 +76,7 @@ def parse_given(value: object, kind: str) -> float:
     example = KINDS[kind][1]
     if isinstance(value, int | float) and not isinstance(value, bool):
         raise ValueError(f'{value!r} has no unit; write it as text with one, like "{example}"')
-    raise ValueError(f"{value!r} is not {_a(kind)}; write it as text, like \"{example}\"")
+    raise ValueError(f'{value!r} is not {_a(kind)}; write it as text, like "{example}"')
 
 
 def theta_g(mass: float, distance: float) -> float:

@@ -39,7 +39,7 @@ def _read_field(value: object) -> tuple[str, float]:
     kind = "length" if isinstance(value, str) and value.strip().endswith("M") else "sky angle"
     number = parse_given(value, kind)
     if number <= 0.0:
-        raise ValueError(f"'{value}' is too small; a field has a positive side, like \"170 uas\" or \"40 M\"")
+        raise ValueError(f'\'{value}\' is too small; a field has a positive side, like "170 uas" or "40 M"')
     return KINDS[kind][0], number
 
 
@@ -193,5 +193,3 @@ class SceneFile(Strict):
     view: View
     source: Source = Field(default_factory=Source)
     emitter: Annotated[list[AnyEmitter], Field(min_length=1)]
-
-

@@ -131,7 +131,9 @@ def put(data: Any, path: lines.Path, value: Any) -> None:
     )
     if not inside:
         name = ".".join(map(str, path))
-        raise Document("", "", data).error(((), f"'{name}' is no key of this scene; with several emitters write emitter.0.…"))
+        raise Document("", "", data).error(
+            ((), f"'{name}' is no key of this scene; with several emitters write emitter.0.…")
+        )
     place[path[-1]] = value
 
 
@@ -145,7 +147,9 @@ def scene_from(document: Document, *, text: str | None = None) -> Scene:
     """
     model = validated(SceneFile, document)
     found: Found = []
-    emitters = tuple((one.strength, _emitter(one, index, document, found)) for index, one in enumerate(model.emitter))
+    emitters = tuple(
+        (one.strength, _emitter(one, index, document, found)) for index, one in enumerate(model.emitter)
+    )
     spacetime = _spacetime(model, found)
     theta = _theta_g(model, found)
     found += _conflicts(model, theta, emitters)
@@ -194,7 +198,9 @@ def _theta_g(model: SceneFile, found: Found) -> float | None:
     hole = model.hole
     if hole.theta_g is not None and (hole.mass is not None or hole.distance is not None):
         given = "mass" if hole.mass is not None else "distance"
-        found.append((("hole", given), "theta_g stands here already; give mass and distance, or theta_g alone"))
+        found.append(
+            (("hole", given), "theta_g stands here already; give mass and distance, or theta_g alone")
+        )
     elif (hole.mass is None) != (hole.distance is None):
         given, absent = ("mass", "distance") if hole.distance is None else ("distance", "mass")
         found.append((("hole", given), f"a {given} needs a {absent} beside it to give an angle on the sky"))

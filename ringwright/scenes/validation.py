@@ -62,7 +62,9 @@ def read_document(path: str | FilePath) -> Document:
     try:
         raw = FilePath(path).read_bytes()
     except OSError as problem:
-        raise SceneError([Problem(name, None, "", f"cannot be read: {problem.strerror or problem}")]) from None
+        raise SceneError(
+            [Problem(name, None, "", f"cannot be read: {problem.strerror or problem}")]
+        ) from None
     if len(raw) > LARGEST_FILE:
         raise SceneError([Problem(name, None, "", "is larger than 4 MiB and so is no file of this kind")])
     try:
@@ -85,9 +87,7 @@ def validated(model: type[Model], document: Document) -> Model:
     try:
         return model.model_validate(document.data)
     except ValidationError as failure:
-        raise SceneError(
-            _worded(document, error) for error in failure.errors(include_url=False)
-        ) from None
+        raise SceneError(_worded(document, error) for error in failure.errors(include_url=False)) from None
 
 
 def dotted(path: Iterable[str | int]) -> str:
@@ -130,11 +130,13 @@ def _extra(given: Any, context: Mapping[str, Any], path: Path) -> str:
 
 def _unknown_kind(given: Any, context: Mapping[str, Any], path: Path) -> str:
     accepted = [word.strip(" '") for word in str(context.get("expected_tags", "")).split(",")]
-    return f"kind {context.get('tag', '')!r} is not known; {did_you_mean(str(context.get('tag', '')), accepted)}"
+    return (
+        f"kind {context.get('tag', '')!r} is not known; {did_you_mean(str(context.get('tag', '')), accepted)}"
+    )
 
 
 def _no_kind(given: Any, context: Mapping[str, Any], path: Path) -> str:
-    return "has no kind; write it as a table with a kind, such as { kind = \"circular\" }"
+    return 'has no kind; write it as a table with a kind, such as { kind = "circular" }'
 
 
 def _choice(given: Any, context: Mapping[str, Any], path: Path) -> str:
@@ -190,10 +192,12 @@ def accepted_keys(path: Path) -> set[str]:
         if isinstance(part, int):
             continue
         models = {
-            inner for model in models if part in model.model_fields
+            inner
+            for model in models
+            if part in model.model_fields
             for inner in _models_in(model.model_fields[part].annotation)
         }
-    return {name for model in models for name in model.model_fields}
+    return {info.alias or name for model in models for name, info in model.model_fields.items()}
 
 
 def _models_in(annotation: Any) -> set[type[BaseModel]]:

@@ -77,7 +77,8 @@ def compare(
             "a comparison needs at least one scan: give the product of `ringwright scan` after the "
             "observation"
         )
-    return compare_numbers(read_observation(observation), tuple(read_scan(item) for item in scans))
+    tables = tuple(read_scan(item) for item in scans)
+    return compare_numbers(read_observation(observation, tables), tables)
 
 
 def compare_numbers(observed: Observed, tables: tuple[ScanTable, ...], refine: int = 1) -> Comparison:

@@ -29,8 +29,8 @@ CLOSED_RING = (RingOutcome.RING, RingOutcome.WIDTH_LIMIT)
 # doubled.
 CELLS_PER_SIGMA = 40.0
 FEWEST_CELLS = 512
-# Doubles in one block of scenes × resolutions × grid: some 2 MB an array, so that blocks stay in the cache.
-BLOCK = 1 << 18
+# Doubles in one block of scenes × resolutions × grid: a quarter of a megabyte an array, so that blocks stay in the cache.
+BLOCK = 1 << 15
 # The conversion factor is collected in cells of 1e-4 of itself, over all that a ring can read.
 FACTOR_EDGES = np.arange(math.log(1.0), math.log(100.0), 1e-4)
 

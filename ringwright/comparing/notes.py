@@ -112,9 +112,8 @@ def held_fixed(tables: tuple[ScanTable, ...]) -> dict[str, str]:
 
 
 def _under(key: str, varied: set[str]) -> bool:
-    """Whether a key, or a table that holds it, varies; the numbers of emitters do not count."""
-    plain = ".".join(part for part in key.split(".") if not part.isdigit())
-    return any(name in (key[: len(name)], plain[: len(name)]) for name in varied)
+    """Whether a key, or a table that holds it, varies."""
+    return any(key == name or key.startswith(f"{name}.") for name in varied)
 
 
 def _same_or_each(values: dict[str, str]) -> str:
@@ -124,13 +123,15 @@ def _same_or_each(values: dict[str, str]) -> str:
 
 
 def _leaves(tree: Any, path: str = "") -> list[tuple[str, str]]:
-    """Every plain value of a nested scene with its key path."""
+    """Every plain value of a nested scene with its key path; a lone emitter needs no number."""
     if isinstance(tree, dict):
         return [
             leaf
             for key, value in tree.items()
             for leaf in _leaves(value, f"{path}.{key}" if path else str(key))
         ]
-    if isinstance(tree, list | tuple) and any(isinstance(item, dict) for item in tree):
-        return [leaf for i, value in enumerate(tree) for leaf in _leaves(value, f"{path}.{i + 1}")]
+    if isinstance(tree, list) and len(tree) == 1:
+        return _leaves(tree[0], path)
+    if isinstance(tree, list):
+        return [leaf for i, value in enumerate(tree) for leaf in _leaves(value, f"{path}.{i}")]
     return [] if tree is None else [(path, str(tree))]

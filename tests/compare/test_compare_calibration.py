@@ -36,7 +36,7 @@ def truths(rng, draw_theta):
 def outcomes(draw_theta, pick, **prior):
     """Interval (low, median, high) and truth for every drawn observation."""
     rng = np.random.default_rng(2024)
-    table = family_table(nodes=40)
+    table = family_table(scenes=128, nodes=40)
     rows = []
     for theta, inner, slope in truths(rng, draw_theta):
         reads = theta * factor(inner, slope, RESOLUTION / theta)

@@ -101,7 +101,7 @@ def compare_numbers(observed: Observed, tables: tuple[ScanTable, ...], refine: i
         prior=notes.priors(observed, tables, replaced),
         held_fixed=notes.held_fixed(tables),
         missing_physics=notes.MISSING_PHYSICS,
-        notes=notes.standing(len(tables) > 1, scale is not None),
+        notes=notes.standing(len(tables) > 1, scale is not None, bool(observed.resolution)),
         warnings=_warnings(observed, families, ring, combined),
     )
 

@@ -57,6 +57,11 @@ DEVIATION = (
     "Without spin in the scan the deviation δ is θ_g/θ_g,prior − 1 of ring_only and nothing more; "
     "spin alone spans 7 % in the critical curve."
 )
+UNSMOOTHED = (
+    "Read as already corrected for resolution, synthetic images are read as sharp as their pixels are: their peak is "
+    "often a thin ring of higher order that no observation resolved, and the emission part of the error is then too "
+    "small. Compare with the diameter read as measured before quoting either."
+)
 COMBINED = (
     "The combined result contains the prior on the scale; only ring_only may be set against that prior."
 )
@@ -68,9 +73,11 @@ MISSING_PHYSICS = (
 )
 
 
-def standing(several: bool, with_scale_prior: bool) -> tuple[str, ...]:
+def standing(several: bool, with_scale_prior: bool, smoothed: bool) -> tuple[str, ...]:
     """The cautions that every answer carries."""
     notes = [RING_IS_NOT_SHADOW, PRIOR_IS_NOT_MEASUREMENT, CONSISTENCY, LOWER_BOUND, BUDGET_OF_RING]
+    if not smoothed:
+        notes.append(UNSMOOTHED)
     if with_scale_prior:
         notes += [COMBINED, DEVIATION]
     if several:

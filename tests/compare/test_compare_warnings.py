@@ -204,3 +204,11 @@ def test_what_was_held_fixed_is_listed():
     assert fixed["view.inclination"] == "0.3"
     for varied_or_without_effect in ("emitter.profile.inner", "hole.mass", "view.field"):
         assert varied_or_without_effect not in fixed
+
+
+def test_a_diameter_read_as_corrected_is_cautioned_about():
+    said = [
+        note for note in compare_numbers(observed(resolution=()), (family_table(),)).notes if "sharp" in note
+    ]
+    assert "thin ring of higher order" in said[0]
+    assert not any("sharp" in note for note in compare_numbers(observed(), (family_table(),)).notes)

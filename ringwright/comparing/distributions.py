@@ -27,6 +27,7 @@ NODES = 201
 PRODUCT_CELLS = 4096
 # Probability left out at either end of a product's grid.
 TAIL = 1e-9
+CURVE_POINTS = 400
 QUANTILES = {"low95": 0.025, "low68": 0.16, "value": 0.5, "high68": 0.84, "high95": 0.975}
 
 
@@ -116,10 +117,13 @@ class LogDensity:
         probability = (np.arange(count) + 0.5) / count
         return np.exp(np.interp(probability, self.cumulative, self.edges)), np.full(count, 1.0 / count)
 
-    def curve(self) -> tuple[Array, Array]:
-        """For drawing: the quantity at the middle of each cell, and its probability density."""
-        values = np.exp(self.edges)
-        return 0.5 * (values[1:] + values[:-1]), np.diff(self.cumulative) / np.diff(values)
+    def curve(self, points: int = CURVE_POINTS) -> tuple[Array, Array]:
+        """For drawing: values of the quantity between the far tails, and its probability density there."""
+        low, high = np.interp([TAIL, 1.0 - TAIL], self.cumulative, self.edges)
+        edges = np.linspace(low, high, points + 1)
+        values = np.exp(edges)
+        below = np.interp(edges, self.edges, self.cumulative)
+        return 0.5 * (values[1:] + values[:-1]), np.diff(below) / np.diff(values)
 
     def times(self, factors: Array, weights: Array) -> LogDensity:
         """Distribution of the product with an independent quantity, given by its nodes and weights."""

@@ -73,7 +73,7 @@ def _write(figure: Figure, path: Path) -> Path:
 
 def _figure(width: float, height: float, title: str) -> Figure:
     figure = Figure(figsize=(width, height), facecolor="white", layout="constrained")
-    figure.suptitle(title, fontsize=10.5, x=0.012, ha="left")
+    figure.suptitle(title.replace("θ_g", "θ$_g$"), fontsize=10.5, x=0.012, ha="left")
     return figure
 
 
@@ -193,8 +193,9 @@ def _dots(axes: Axes, family: FamilyAnswer, parameter: ScanParameter, ink: str) 
     share = family.posterior.shares()
     alpha = np.clip(share / share.max(), 0.04, 1.0) * 0.7
     axes.scatter(x, np.exp(family.posterior.factor), s=9, color=ink, alpha=alpha, linewidths=0)
-    if parameter.labels:
-        axes.set_xticks(range(len(parameter.labels)), parameter.labels, fontsize=8)
+    if parameter.kind == "list":
+        values = np.unique(parameter.values)
+        axes.set_xticks(values, parameter.labels or [f"{value:g}" for value in values], fontsize=8)
     axes.set_xlabel(f"{parameter.key} [{unit}]" if unit else parameter.key, fontsize=9)
 
 

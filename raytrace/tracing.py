@@ -61,7 +61,9 @@ def trace(
     if not (np.isfinite(x).all() and np.isfinite(y).all()):
         raise ValueError("a screen position is not finite; every ray needs a finite alpha and beta [M]")
     if isinstance(orders, bool) or int(orders) != orders or orders < 1:
-        raise ValueError(f"orders = {orders!r} is a count of crossings and must be a whole number from 1 upward")
+        raise ValueError(
+            f"orders = {orders!r} is a count of crossings and must be a whole number from 1 upward"
+        )
     hit = hole.trace_rays(x, y, checked_inclination(inclination), int(orders), azimuth, delay, momentum)
     return _first_ray(hit) if scalar else hit
 

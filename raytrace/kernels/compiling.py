@@ -54,7 +54,9 @@ def _writable_base() -> Path:
         if os.access(folder, os.W_OK):
             return folder
     temporary = Path(tempfile.mkdtemp(prefix="ringwright-kernels-"))
-    print(f"ringwright: no writable cache folder; compiled kernels go to {temporary} for now", file=sys.stderr)
+    print(
+        f"ringwright: no writable cache folder; compiled kernels go to {temporary} for now", file=sys.stderr
+    )
     return temporary
 
 

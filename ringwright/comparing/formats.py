@@ -14,6 +14,7 @@ from ringwright.comparing.results import Estimate
 
 SUPERSCRIPTS = str.maketrans("-0123456789", "⁻⁰¹²³⁴⁵⁶⁷⁸⁹")
 SIGNIFICANT = 2
+NEAR = 0.1  # [Mpc] below which distances are written in kpc
 
 
 def decimals(error: float) -> int:
@@ -64,10 +65,15 @@ def published(given: TwoPiece, unit: str = "") -> str:
     """A number that was given, such as "16.8 +0.8 −0.7 Mpc"; masses (`M☉`) with a power of ten."""
     if unit == "M☉":
         exponent = power(given.mode)
-        scaled = TwoPiece(*(part / 10.0**exponent for part in (given.mode, given.plus, given.minus)))
-        return f"({published(scaled)}) × {ten_to(exponent)} M☉"
+        return f"({published(_scaled(given, 10.0**-exponent))}) × {ten_to(exponent)} M☉"
+    if unit == "Mpc" and given.mode < NEAR:
+        return published(_scaled(given, 1e3), "kpc")
     if given.exact:
         return f"{given.mode:.4g} {unit}".strip() + ", held exact"
     if given.plus == given.minus:
         return f"{given.mode:.4g} ± {given.plus:.3g} {unit}".strip()
     return f"{given.mode:.4g} +{given.plus:.3g} −{given.minus:.3g} {unit}".strip()
+
+
+def _scaled(given: TwoPiece, factor: float) -> TwoPiece:
+    return TwoPiece(factor * given.mode, factor * given.plus, factor * given.minus)

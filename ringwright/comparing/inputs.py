@@ -8,6 +8,7 @@ from __future__ import annotations
 
 import math
 from dataclasses import dataclass, field
+from typing import Any
 
 import numpy as np
 from numpy.typing import NDArray
@@ -81,6 +82,20 @@ class Observed:
                 "sky; "
                 "add [distance], or give the prior as theta_g"
             )
+
+    def to_json(self) -> dict[str, Any]:
+        """Name, diameter with its resolution (µas; empty if corrected) and estimator; priors are told in words."""
+        return {
+            "name": self.name,
+            "diameter": {
+                "value": self.diameter.mode,
+                "unit": "uas",
+                "plus": self.diameter.plus,
+                "minus": self.diameter.minus,
+            },
+            "resolution": {"value": list(self.resolution), "unit": "uas"},
+            "estimator": self.estimator,
+        }
 
     @property
     def factors(self) -> tuple[float, float]:

@@ -220,7 +220,7 @@ class Comparison(Answer):
     def to_json(self) -> dict[str, Any]:
         """One object of plain numbers and strings."""
         return {
-            "observation": self.observation.name,
+            "observation": self.observation.to_json(),
             **super().to_json(),
             "families": [item.to_json() for item in self.families],
             "prior": self.prior,

@@ -140,6 +140,8 @@ def test_json_holds_what_the_design_names():
     assert plain["ring_only"]["theta_g"]["unit"] == "uas"
     assert set(plain["scenes"]) == {"total", "effective", "excluded"}
     assert plain["combined"] is None
+    assert plain["observation"]["diameter"] == {"value": 42.0, "unit": "uas", "plus": 3.0, "minus": 3.0}
+    assert plain["observation"]["resolution"]["value"] == []
     # 2√27 (Hilbert 1917): the diameter of the critical curve of a hole without spin.
     ratio = plain["critical_curve_diameter"]["value"] / plain["ring_only"]["theta_g"]["value"]
     assert ratio == pytest.approx(2 * math.sqrt(27))

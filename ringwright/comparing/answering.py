@@ -1,8 +1,8 @@
 """`compare`: from an observation and scans to θ_g, mass, budget and cautions.
 
-The method is that of DESIGN, "The comparison, precisely": a posterior summed over scenes on a grid in ln
-θ_g, once without and once with the prior on the scale, distance summed out for the mass. Angles in µas,
-distances in Mpc, masses in solar masses.
+The method is that of docs/comparing.md: a posterior summed over scenes on a grid in ln θ_g, once without and
+once with the prior on the scale, distance summed out for the mass. Angles in µas, distances in Mpc, masses in
+solar masses.
 """
 
 from __future__ import annotations
@@ -194,7 +194,7 @@ def _answer(
         ring_only=_scale(curves.theta_g, curves.mass, NO_DISTANCE),
         combined=None
         if scale is None
-        else _scale(curves.theta_g_combined, curves.mass_combined, _why(observed, combined)),
+        else _scale(curves.theta_g_combined, curves.mass_combined, _why(combined)),
         conversion_factor=Estimate.of(ring.factor_density(), ""),
         critical_curve_diameter=Estimate.of(curves.theta_g, "uas", critical),
         deviation=_deviation(curves, critical),
@@ -220,7 +220,7 @@ def _none(scale: ScalePrior | None, scenes: int) -> Answer:
     )
 
 
-def _why(observed: Observed, combined: Posterior | None) -> str:
+def _why(combined: Posterior | None) -> str:
     return NO_OVERLAP if combined is None else NO_DISTANCE
 
 

@@ -1,4 +1,4 @@
-"""The warnings of a comparison, each with what to do about it (DESIGN, "The comparison, precisely", step 8).
+"""The warnings of a comparison, each with what to do about it (docs/comparing.md, "Warnings").
 
 Every check computes what it says from the posterior at hand; thresholds are named below with their reasons.
 Angles in µas; positions within a parameter's range run from 0 to 1 of its prior probability.
@@ -26,7 +26,7 @@ RISE = 1.5  # of posterior over prior across that share
 STILL_CHANGES = 0.01  # of k across that share; below 1 % a wider range would not move the mass
 SIGNIFICANT = 2.0  # standard errors that a slope must stand out by, so that few scenes raise no false alarm
 FEWEST_IN_END = 8  # scenes needed to fit a slope at all
-# At r/d = 0.6 a ring of zero width reads its diameter 18 % small (CHECK-VALUES, section 8): r is then 0.73
+# At r/d = 0.6 a ring of zero width reads its diameter 18 % small (exact blurred thin ring): r is then 0.73
 # of what is read.
 RESOLVED = 0.73
 END_SIGMA = 2.0  # a table that stops within two standard errors of the observed diameter cuts the posterior
@@ -136,9 +136,12 @@ def _coarse(observed: Observed, table: ScanTable, ring: Posterior) -> Caution | 
         return None
     return Caution(
         "coarse-readings",
-        f"The scenes of {table.name} are read to {100 * numerical:.1f} % only, which was added to the error of the "
-        f"diameter and widens it by {100 * widened:.0f} %; a diameter that jumps with the resolution is one cause.",
-        "Run the scan with more pixels or a larger field; where the diameter jumps, look at the images of those scenes.",
+        f"The scenes of {table.name} are read to {100 * numerical:.1f} % only, which was added to the "
+        "error of the "
+        f"diameter and widens it by {100 * widened:.0f} %; a diameter that jumps with the resolution is "
+        "one cause.",
+        "Run the scan with more pixels or a larger field; where the diameter jumps, look at the images of "
+        "those scenes.",
     )
 
 

@@ -1,5 +1,4 @@
-"""One-dimensional distributions of a comparison: published numbers with their errors, and posteriors on a
-grid.
+"""Distributions of one positive quantity: published numbers with their errors, and posteriors on a grid.
 
 A quoted value with two errors is a two-piece normal with its mode at the value (Fechner; reviewed by Wallis
 2014, Statistical Science 29, 106, from memory). Posteriors live on cells in the logarithm of a positive

@@ -1,5 +1,4 @@
-"""How numbers of a comparison are written: as many digits as the error allows, powers of ten with
-superscripts.
+"""How numbers of a comparison are written: as many digits as the error allows, powers of ten raised.
 
 Common practice: the largest error keeps two significant digits and everything beside it the same decimals.
 Strings only; units are the caller's.

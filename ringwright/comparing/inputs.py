@@ -84,7 +84,9 @@ class Observed:
             )
 
     def to_json(self) -> dict[str, Any]:
-        """Name, diameter with its resolution (µas; empty if corrected) and estimator; priors are told in words."""
+        """Name, diameter with its resolution (µas; empty if corrected) and estimator; priors are told in
+        words.
+        """
         return {
             "name": self.name,
             "diameter": {

@@ -1,9 +1,8 @@
-"""One pass over scenes × grid: the probability of the observed diameter at every θ_g, and what each scene
-says of it.
+"""One pass over scenes × grid: how probable the observed diameter is on each scene at every θ_g.
 
 A scene reads the diameter d(θ_g) = θ_g D(r/θ_g) with D its table, linear between nodes that both show a
-closed ring; where there is none the likelihood is zero (DESIGN, "The comparison, precisely", steps 2 and
-3). Angles in µas, grids in ln θ_g.
+closed ring; where there is none the likelihood is zero (docs/comparing.md, steps 1 and 2). Angles in µas,
+grids in ln θ_g.
 """
 
 from __future__ import annotations
@@ -29,7 +28,8 @@ CLOSED_RING = (RingOutcome.RING, RingOutcome.WIDTH_LIMIT)
 # doubled.
 CELLS_PER_SIGMA = 40.0
 FEWEST_CELLS = 512
-# Doubles in one block of scenes × resolutions × grid: a quarter of a megabyte an array, so that blocks stay in the cache.
+# Doubles in one block of scenes × resolutions × grid: a quarter of a megabyte an array, so that blocks stay
+# in the cache.
 BLOCK = 1 << 15
 # The conversion factor is collected in cells of 1e-4 of itself, over all that a ring can read.
 FACTOR_EDGES = np.arange(math.log(1.0), math.log(100.0), 1e-4)

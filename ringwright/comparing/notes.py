@@ -1,5 +1,4 @@
-"""The words that go with every comparison: priors as they were used, what was held fixed, and the standing
-cautions.
+"""The words that go with every comparison: priors as used, what was held fixed, and the standing cautions.
 
 Nothing is computed here but the text; the facts come from the observation and the scans. Angles in µas,
 distances in Mpc, masses in solar masses.
@@ -58,8 +57,10 @@ DEVIATION = (
     "spin alone spans 7 % in the critical curve."
 )
 UNSMOOTHED = (
-    "Read as already corrected for resolution, synthetic images are read as sharp as their pixels are: their peak is "
-    "often a thin ring of higher order that no observation resolved, and the emission part of the error is then too "
+    "Read as already corrected for resolution, synthetic images are read as sharp as their pixels are: "
+    "their peak is "
+    "often a thin ring of higher order that no observation resolved, and the emission part of the error "
+    "is then too "
     "small. Compare with the diameter read as measured before quoting either."
 )
 COMBINED = (

@@ -1,7 +1,7 @@
 """Priors of a comparison: on θ_g, on mass and distance together, and on the parameters of the scan's scenes.
 
 With a prior on the mass, p(θ_g, D) ∝ L(θ_g) π_M(θ_g c²D/G) π_D(D) D: the factor D is the Jacobian from M to
-θ_g (DESIGN, "The comparison, precisely", step 4). Angles in µas, distances in Mpc, masses in solar masses;
+θ_g (docs/comparing.md, step 6). Angles in µas, distances in Mpc, masses in solar masses;
 densities are per unit ln θ_g.
 """
 

@@ -1,5 +1,4 @@
-"""What a comparison answers, as small frozen objects whose fields are astropy quantities and the keys of
-the JSON.
+"""What a comparison answers: small frozen objects whose fields are astropy quantities and the JSON's keys.
 
 An estimate is a median with equal-tailed 68 % and 95 % intervals; one that does not exist has no value and
 says why. θ_g in µas, mass in solar masses, the conversion factor k = d/θ_g and the deviation δ without a
@@ -161,7 +160,9 @@ class Answer:
 
     @property
     def probability_below_prior(self) -> float | None:
-        """Probability that θ_g of the ring alone is smaller than that of the prior: a tail where they disagree."""
+        """Probability that θ_g of the ring alone is smaller than that of the prior: a tail where they
+        disagree.
+        """
         ratio = self.curves.over_prior
         return None if ratio is None else ratio.probability_below(1.0)
 

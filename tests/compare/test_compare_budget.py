@@ -123,7 +123,7 @@ def test_the_line_for_a_paper_names_every_part():
         assert part in line
 
 
-def test_json_holds_what_the_design_names():
+def test_json_holds_the_promised_keys():
     request = observed(distance=TwoPiece(16.8, 0.8, 0.7))
     plain = compare_numbers(request, (family_table(),)).to_json()
     for key in (

@@ -1,7 +1,7 @@
 """First calibration: truths drawn from the stated prior, observed with noise, fall inside the 68 % interval
 68 % of the time.
 
-Issue: 300 truths, 68 ± 6 % inside (one binomial standard deviation is 2.7 %). A control with halved
+Required: 300 truths, 68 ± 6 % inside (one binomial standard deviation is 2.7 %). A control with halved
 intervals must fail the same check.
 """
 

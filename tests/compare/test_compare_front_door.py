@@ -1,4 +1,5 @@
-"""`rw.compare` from files and from objects: units come off, and what cannot be used is refused with a sentence.
+"""`rw.compare` from files and from objects: units come off, and what cannot be used is refused with a
+sentence.
 
 Invented observations; common practice, no source.
 """

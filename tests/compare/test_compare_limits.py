@@ -100,7 +100,7 @@ def test_the_mass_without_a_prior_is_theta_g_times_an_independent_distance():
 
 
 def test_one_solar_mass_at_one_megaparsec_has_the_published_angle():
-    # CHECK-VALUES, section 8: 6.5e9 M☉ at 16.8 Mpc → 3.81899 µas (CHK; GM☉ of IAU 2015).
+    # Computed independently with GM☉ of IAU 2015 (CHK): 6.5e9 M☉ at 16.8 Mpc → 3.81899 µas.
     assert pytest.approx(3.81899, abs=5e-6) == 6.5e9 / 16.8 * THETA_G_OF_SUN
     assert pytest.approx(5.12433, abs=5e-6) == 4.297e6 / 8.277e-3 * THETA_G_OF_SUN
 

@@ -81,7 +81,7 @@ def test_the_excluded_prior_weight_is_that_of_scenes_without_such_a_ring():
 
 
 def test_a_ring_not_resolved_is_warned_of():
-    # A ring of zero width reads 0.821 of its diameter at r/d = 0.6 (CHECK-VALUES, section 8, CHK).
+    # A ring of zero width reads 0.821 of its diameter at r/d = 0.6 (exact blurred thin ring, CHK).
     assert "unresolved-ring" in codes(compare_numbers(observed(resolution=(32.0,)), (family_table(),)))
     assert "unresolved-ring" not in codes(compare_numbers(observed(resolution=(29.0,)), (family_table(),)))
     assert "unresolved-ring" not in codes(compare_numbers(observed(resolution=()), (family_table(),)))

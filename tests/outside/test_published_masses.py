@@ -2,8 +2,8 @@
 
 The emission prior (inner edge 2 to 4 M, slope 3 to 5, three motions, two spectral indices) resembles the
 emission for which the published conversion factor was derived: agreement is a consistency check, not an
-independent mass. Values from CHECK-VALUES, section 8; the intervals asked for are those of the issue. The
-scans render 256 scenes each, so this module is the slowest of all: run it in one worker.
+independent mass. Tags: ABS read in an abstract, MEM from memory, CHK computed independently. The
+scans render 128 or 256 scenes each, so this module is the slowest of all: run it in one worker.
 """
 
 from pathlib import Path
@@ -45,11 +45,11 @@ def half_width(estimate):
 def test_the_ring_of_m87_gives_the_published_mass(m87):
     mass = m87.ring_only.mass
     assert abs(mass.value.to_value("solMass") - M87_MASS) < M87_ERROR
-    assert 0.08 < half_width(mass) < 0.14  # issue 2, section 8
+    assert 0.08 < half_width(mass) < 0.14  # required
 
 
 def test_the_ring_of_m87_gives_a_published_conversion_factor(m87):
-    # Published: α ≈ 11, 10.7 to 11.5 by method (EHT M87* VI, MEM-H); the issue asks for a median between
+    # Published: α ≈ 11, 10.7 to 11.5 by method (EHT M87* VI, MEM-H); required is a median between
     # 10.4 and 11.6.
     assert 10.4 < m87.conversion_factor.number < 11.6
 
@@ -81,7 +81,8 @@ def test_a_diameter_read_as_corrected_moves_the_mass(m87, near_face_on):
 
 
 def test_emission_from_the_stable_orbit_lowers_the_mass_of_m87(m87, tmp_path_factory):
-    # Issue 2, section 8: the lesson the tool exists for.
+    # Required; common practice, no source: where the gas shines moves the mass more than the error of the
+    # ring.
     other = rw.compare(DATA / "m87.toml", scanned("stable-orbit", tmp_path_factory))
     assert 14.0 < other.conversion_factor.number < 17.0
     lower = 1.0 - float(other.ring_only.mass.value / m87.ring_only.mass.value)
@@ -97,7 +98,7 @@ def test_hardly_known_emission_dominates_the_error_and_is_said_to(tmp_path_facto
 
 
 def test_both_stellar_priors_of_sgr_a_lie_within_the_ring(tmp_path_factory):
-    # 51.8 ± 2.3 µas, EHT Sgr A* I and IV 2022 (ABS): an emission ring, not a shadow (CHECK-VALUES, D11).
+    # 51.8 ± 2.3 µas, EHT Sgr A* I and IV 2022 (ABS): an emission ring, not a shadow.
     answer = rw.compare(DATA / "sgr-a.toml", scanned("all-inclinations", tmp_path_factory))
     theta = answer.ring_only.theta_g
     for name, value in SGR_A_PRIORS.items():

@@ -21,6 +21,9 @@ POINTS_3 = np.array([-0.7745966692414834, 0.0, 0.7745966692414834])
 WEIGHTS_3 = np.array([5.0 / 9.0, 8.0 / 9.0, 5.0 / 9.0])
 POINTS_4 = np.array([-0.8611363115940526, -0.3399810435848563, 0.3399810435848563, 0.8611363115940526])
 WEIGHTS_4 = np.array([0.34785484513745385, 0.6521451548625461, 0.6521451548625461, 0.34785484513745385])
+POINTS_8, WEIGHTS_8 = np.polynomial.legendre.leggauss(8)
+# A piece of a chord shorter than this share of its panel gets four points instead of eight.
+SHORT_PIECE = 0.4
 # A pixel wider than this share of the panel that it lies in is integrated by chords cut at the panel's
 # edges; a narrower one by three points a side, a narrow one by two. A panel holds light that falls by less
 # than a factor of ten.
@@ -135,12 +138,14 @@ def _along(t0, t1, edges, coefficients, terms, blockers, first, weights):
             middle = 0.5 * (start + end)
             half = 0.5 * (end - start)
             if not _hidden(middle, blockers, first, weights):
-                for i in range(4):
-                    t = middle + half * POINTS_4[i]
+                few = 2.0 * half < SHORT_PIECE * (high - low)
+                for i in range(4 if few else 8):
+                    point = POINTS_4[i] if few else POINTS_8[i]
+                    weight = WEIGHTS_4[i] if few else WEIGHTS_8[i]
+                    t = middle + half * point
                     x = (2.0 * t - low - high) / (high - low)
-                    total += (
-                        WEIGHTS_4[i] * half * t * _brightness(coefficients[k], terms[k], first, weights, x)
-                    )
+                    light = _brightness(coefficients[k], terms[k], first, weights, x)
+                    total += weight * half * t * light
             start = end
         low = high
     return total

@@ -18,7 +18,7 @@ demo: $(READY)
 	$(BIN)/python scenes/demo.py
 
 test: $(READY)
-	NUMBA_NUM_THREADS=1 $(BIN)/python -m pytest -n $(PARALLEL)
+	NUMBA_NUM_THREADS=1 $(BIN)/python -m pytest -n $(PARALLEL) --dist loadgroup
 
 check: $(READY)
 	$(BIN)/ruff check .

@@ -11,7 +11,7 @@ from enum import IntEnum
 from typing import NamedTuple, Protocol, runtime_checkable
 
 import numpy as np
-from numpy.typing import NDArray
+from numpy.typing import ArrayLike, NDArray
 
 Array = NDArray[np.float64]
 
@@ -100,16 +100,23 @@ class Hit:
 class Spacetime(Protocol):
     """What every metric offers. Radii in M; equatorial and prograde where it matters."""
 
-    name: str
-    horizon: float
-    photon_orbit: float
-    isco: float
+    @property
+    def name(self) -> str: ...
 
-    def metric(self, r: Array | float, theta: Array | float) -> Metric:
+    @property
+    def horizon(self) -> float: ...
+
+    @property
+    def photon_orbit(self) -> float: ...
+
+    @property
+    def isco(self) -> float: ...
+
+    def metric(self, r: ArrayLike, theta: ArrayLike) -> Metric:
         """Covariant components at (r, θ)."""
         ...
 
-    def circular_orbit(self, r: Array | float) -> CircularOrbit:
+    def circular_orbit(self, r: ArrayLike) -> CircularOrbit:
         """Circular geodesic at radius r outside the photon orbit."""
         ...
 

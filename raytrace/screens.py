@@ -214,7 +214,7 @@ def band(
     spacetime : Spacetime, optional
         Schwarzschild unless given.
     """
-    steps = (np.arange(angles) + 0.5) * (2.0 * math.pi / angles)
+    steps = (np.arange(angles, dtype=np.float64) + 0.5) * (2.0 * math.pi / angles)
     images = isoradial(
         radii[:, None], order=order, angle=steps[None, :], inclination=inclination, spacetime=spacetime
     )

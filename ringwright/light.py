@@ -188,7 +188,7 @@ def shaded(scene: Scene, emitter: em.contract.Emitter, hit: Hit) -> Array:
 
 def _lit_sky(scene: Scene, strength: float, emitter: em.contract.Emitter) -> LitBand:
     """Light from infinity: everything outside the critical curve, to beyond the corner of the field."""
-    angles = (np.arange(FEWEST_ANGLES) + 0.5) * (2.0 * math.pi / FEWEST_ANGLES)
+    angles = (np.arange(FEWEST_ANGLES, dtype=np.float64) + 0.5) * (2.0 * math.pi / FEWEST_ANGLES)
     inner = _critical(scene.spacetime, scene.inclination, angles)
     outer = np.full_like(inner, BEYOND_CORNER * max(scene.field_m, 4.0 * float(np.max(inner))))
     points, weights = gauss_legendre(NODES)
@@ -238,7 +238,7 @@ def _around(rows: Array, count: int) -> Array:
 def chebyshev_transform(count: int) -> Array:
     """Matrix (count, count) from values at the Gauss–Legendre nodes to Chebyshev coefficients."""
     points, _ = gauss_legendre(count)
-    return np.linalg.inv(chebyshev.chebvander(points, count - 1))
+    return np.asarray(np.linalg.inv(chebyshev.chebvander(points, count - 1)), dtype=np.float64)
 
 
 def _limits(edges: Array) -> Array:

@@ -84,9 +84,16 @@ def render(scene: Scene | str | Path, *, maps: bool = False, accuracy: float = A
         band_width=width,
         maps=_maps(scene) if maps else {},
         notes=_notes(scene, bands, flux * scale, in_field, width, accuracy),
-        position=None if scene.position is None else tuple(float(a.to_value("deg")) for a in scene.position),
+        position=_position(scene),
         provenance=products.provenance(scene.text, scene.resolved()),
     )
+
+
+def _position(scene: Scene) -> tuple[float, float] | None:
+    if scene.position is None:
+        return None
+    ra, dec = scene.position
+    return float(ra.to_value("deg")), float(dec.to_value("deg"))
 
 
 def _scale(scene: Scene, flux: Array) -> float:

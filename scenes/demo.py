@@ -1,7 +1,7 @@
 """The whole job on an invented nucleus: from a scene to an image, from an observed ring to a mass, in plain words.
 
-`make demo` runs it. Everything it makes goes to outputs/. The nucleus is invented, and its true mass is known, so that the answer can
-be held against it: 9.2 × 10⁹ M☉ at 21.0 ± 1.5 Mpc, θ_g = 4.32 µas.
+`make demo` runs it. Everything it makes goes to outputs/. The nucleus is invented, and its true mass is known, so that
+the answer can be held against it: 9.2 × 10⁹ M☉ at 21.0 ± 1.5 Mpc, θ_g = 4.32 µas.
 """
 
 from __future__ import annotations
@@ -101,8 +101,8 @@ def conclusions(answers: dict[tuple[str, str], Comparison]) -> str:
         lines += family_says(answers["first-observation", family])
     lines += [preference(name, answers) for name in DYNAMICAL]
     lines.append(
-        "The diameter alone cannot choose between the families: each scene of either fits it at some θ_g. The dynamical masses can, "
-        "and they disagree; a prior is not a measurement, and a ring diameter is not a shadow diameter."
+        "The diameter alone cannot choose between the families: each scene of either fits it at some θ_g. The dynamical "
+        "masses can, and they disagree; a prior is not a measurement, and a ring diameter is not a shadow diameter."
     )
     lines.append(truth(answers["first-observation", SCANS[0]]))
     return "\n".join(f"- {line}" for line in lines)

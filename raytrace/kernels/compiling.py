@@ -76,8 +76,9 @@ def kernel(
     """
 
     def compile_(function: Callable[..., Any]) -> Any:
-        before = numba.config.CACHE_DIR
-        numba.config.CACHE_DIR = _cache_folder(Path(function.__code__.co_filename).resolve().parent)
+        settings: Any = numba.config
+        before = settings.CACHE_DIR
+        settings.CACHE_DIR = _cache_folder(Path(function.__code__.co_filename).resolve().parent)
         try:
             return numba.njit(
                 function,
@@ -89,6 +90,6 @@ def kernel(
                 inline="always" if inline else "never",
             )
         finally:
-            numba.config.CACHE_DIR = before
+            settings.CACHE_DIR = before
 
     return compile_

@@ -23,7 +23,7 @@ Array = NDArray[np.float64]
 
 FIRST_STEP = 1.0
 STEP = 0.75
-BASE_NODES = 12  # reaches 8.5, beyond which a ring of two photon-ring diameters is hardly a ring
+BASE_NODES = 18  # reaches 13: a ring of emission from the innermost stable orbit is resolved far beyond 8
 MOST_NODES = 48
 HALFWAY_TOLERANCE = 0.003
 # No interval is halved below this: a jump of the diameter or the loss of the ring is placed to 0.03 θ_g,
@@ -61,6 +61,7 @@ class Readings:
     central_brightness: Array
     outcome: NDArray[np.int8]
     halfway_error: float
+    jump: float
     finest: float
 
 
@@ -97,6 +98,7 @@ class _Table:
         self.known: dict[float, Reading] = {}
         self.nodes: set[float] = set()
         self.error = 0.0
+        self.jump = 0.0
 
     def read(self, x: float) -> Reading:
         resolution = max(x, self.finest)
@@ -136,7 +138,10 @@ class _Table:
         between = self.read(middle)
         if left.outcome == right.outcome == between.outcome:
             miss = abs(0.5 * (left.diameter + right.diameter) / between.diameter - 1.0)
-            if miss <= HALFWAY_TOLERANCE or shortest or len(self.nodes) >= MOST_NODES:
+            if miss > HALFWAY_TOLERANCE and shortest:
+                self.jump = max(self.jump, miss)  # two rings of nearly one brightness change places here
+                return
+            if miss <= HALFWAY_TOLERANCE or len(self.nodes) >= MOST_NODES:
                 self.error = max(self.error, miss)
                 return
         if len(self.nodes) < MOST_NODES:
@@ -155,6 +160,7 @@ class _Table:
             central_brightness=np.array([row.central_brightness for row in rows]),
             outcome=np.array([row.outcome for row in rows], dtype=np.int8),
             halfway_error=self.error,
+            jump=self.jump,
             finest=self.finest,
         )
 

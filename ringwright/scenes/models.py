@@ -6,9 +6,20 @@ units and values of another type are refused; what several keys must satisfy tog
 
 from __future__ import annotations
 
+import math
+from dataclasses import dataclass
 from typing import Annotated, Any, Literal
 
-from pydantic import BaseModel, BeforeValidator, ConfigDict, Field, WithJsonSchema
+from pydantic import (
+    BaseModel,
+    BeforeValidator,
+    ConfigDict,
+    Field,
+    GetCoreSchemaHandler,
+    GetJsonSchemaHandler,
+    WithJsonSchema,
+)
+from pydantic_core import CoreSchema, core_schema
 
 from ringwright.units import KINDS, parse_given
 
@@ -16,22 +27,38 @@ FEWEST_PIXELS, MOST_PIXELS = 8, 16384
 MOST_ORDERS = 6
 
 
-def quantity(kind: str, low: float | None = None, high: float | None = None, strict: bool = False) -> Any:
-    """A pydantic type for a quantity of one kind, with limits in the unit that it is kept in."""
-    unit, example = KINDS[kind]
+@dataclass(frozen=True)
+class Given:
+    """What makes a float a quantity of one kind in a file, with limits in the unit that it is kept in."""
 
-    def read(value: object) -> float:
-        number = parse_given(value, kind)
-        shown, scale = ("deg", 57.29577951308232) if unit == "rad" else (unit, 1.0)
-        if low is not None and (number < low or (strict and number == low)):
-            limit = "more than" if strict else "at least"
-            raise ValueError(f"'{value}' is too small; {limit} {low * scale:g} {shown} is accepted")
-        if high is not None and number > high:
-            raise ValueError(f"'{value}' is too large; at most {high * scale:g} {shown} is accepted")
+    kind: str
+    low: float | None = None
+    high: float | None = None
+    above: bool = False
+
+    def __get_pydantic_core_schema__(self, source: Any, handler: GetCoreSchemaHandler) -> CoreSchema:
+        return core_schema.no_info_plain_validator_function(self.read)
+
+    def __get_pydantic_json_schema__(
+        self, schema: CoreSchema, handler: GetJsonSchemaHandler
+    ) -> dict[str, Any]:
+        return {
+            "type": "string",
+            "description": f"{self.kind}: a number and a unit",
+            "examples": [KINDS[self.kind][1]],
+        }
+
+    def read(self, value: object) -> float:
+        """The quantity as a plain number, or a ValueError that says what is accepted."""
+        number = parse_given(value, self.kind)
+        unit = KINDS[self.kind][0]
+        shown, scale = ("deg", math.degrees(1.0)) if unit == "rad" else (unit, 1.0)
+        if self.low is not None and (number < self.low or (self.above and number == self.low)):
+            limit = "more than" if self.above else "at least"
+            raise ValueError(f"'{value}' is too small; {limit} {self.low * scale:g} {shown} is accepted")
+        if self.high is not None and number > self.high:
+            raise ValueError(f"'{value}' is too large; at most {self.high * scale:g} {shown} is accepted")
         return number
-
-    schema = {"type": "string", "description": f"{kind}: a number and a unit", "examples": [example]}
-    return Annotated[float, BeforeValidator(read), WithJsonSchema(schema)]
 
 
 def _read_field(value: object) -> tuple[str, float]:
@@ -43,18 +70,17 @@ def _read_field(value: object) -> tuple[str, float]:
     return KINDS[kind][0], number
 
 
-PI = 3.141592653589793
-Inclination = quantity("angle", 0.0, PI * (1.0 + 1e-15))
-Angle = quantity("angle")
-Declination = quantity("angle", -PI / 2, PI / 2)
-SkyAngle = quantity("sky angle", 0.0, strict=True)
-Mass = quantity("mass", 0.0, strict=True)
-Distance = quantity("distance", 0.0, strict=True)
-Frequency = quantity("frequency", 0.0, strict=True)
-FluxDensity = quantity("flux density", 0.0, strict=True)
-Radius = quantity("length", 2.0)
-Length = quantity("length", 0.0)
-Width = quantity("length", 0.0, strict=True)
+Inclination = Annotated[float, Given("angle", 0.0, math.pi * (1.0 + 1e-15))]
+Angle = Annotated[float, Given("angle")]
+Declination = Annotated[float, Given("angle", -math.pi / 2, math.pi / 2)]
+SkyAngle = Annotated[float, Given("sky angle", 0.0, above=True)]
+Mass = Annotated[float, Given("mass", 0.0, above=True)]
+Distance = Annotated[float, Given("distance", 0.0, above=True)]
+Frequency = Annotated[float, Given("frequency", 0.0, above=True)]
+FluxDensity = Annotated[float, Given("flux density", 0.0, above=True)]
+Radius = Annotated[float, Given("length", 2.0)]
+Length = Annotated[float, Given("length", 0.0)]
+Width = Annotated[float, Given("length", 0.0, above=True)]
 Side = Annotated[
     tuple[str, float],
     BeforeValidator(_read_field),

@@ -31,9 +31,7 @@ def face_on_flux(order: int) -> float:
         return float(em.shade(disk, hit)[0, 0, 0]) * b
 
     ends = [float(rt.isoradial(r, order=order, angle=0.0, inclination=0.0)) for r in EDGES]
-    pieces = (
-        quad(intensity, a, b, epsabs=0.0, epsrel=1e-8)[0] for a, b in itertools.pairwise(ends)
-    )
+    pieces = (quad(intensity, a, b, epsabs=0.0, epsrel=1e-8)[0] for a, b in itertools.pairwise(ends))
     return 2.0 * math.pi * sum(pieces)
 
 
@@ -62,7 +60,7 @@ def test_a_pixel_holds_the_mean_over_its_area(write_scene):
     coarse = rw.render(write_scene(pixels=50)).total
     fine = rw.render(write_scene(pixels=250)).total
     summed = fine.reshape(50, 5, 50, 5).sum(axis=(1, 3))
-    assert coarse == pytest.approx(summed, abs=2e-5 * float(coarse.max()))
+    assert coarse == pytest.approx(summed, abs=AT_128 * float(coarse.max()))
 
 
 def test_turning_the_sky_by_a_right_angle_turns_the_image(write_scene):
@@ -91,23 +89,29 @@ def test_the_dark_disk_of_a_backdrop_has_the_radius_of_the_critical_curve(write_
     assert math.sqrt(dark_area / math.pi) == pytest.approx(math.sqrt(27.0), rel=1e-5)
 
 
+OPAQUE = """
+[[emitter]]
+kind = "thin-disk"
+opaque = {opaque}
+profile = {{ kind = "power-law", inner = "6 M", outer = "40 M", slope = 3.0 }}
+flow = {{ kind = "circular" }}
+"""
+
+
 def test_an_opaque_disk_shows_its_first_crossing_only(write_scene):
-    thin = rw.render(write_scene())
-    opaque = rw.render(write_scene(emitters=DISK_OPAQUE, name="opaque"))
+    thin = rw.render(write_scene(emitters=OPAQUE.format(opaque="false")))
+    opaque = rw.render(write_scene(emitters=OPAQUE.format(opaque="true"), name="opaque"))
     thin_light = thin.intensity[0] / thin.flux[0]
     assert opaque.intensity[0] / opaque.flux[0] == pytest.approx(thin_light, abs=1e-9)
     # Higher orders survive only inside the disk's inner edge or beyond its outer one.
-    assert 0.0 < opaque.flux[1] / opaque.flux[0] < 0.5 * thin.flux[1] / thin.flux[0]
-    assert opaque.flux_in_field.sum() == pytest.approx(1.0, rel=1e-3)
-
-
-DISK_OPAQUE = """
-[[emitter]]
-kind = "thin-disk"
-opaque = true
-profile = { kind = "power-law", inner = "2.6 M", outer = "40 M", slope = 3.7 }
-flow = { kind = "circular" }
-"""
+    assert 0.0 < opaque.flux[1] / opaque.flux[0] < 0.9 * thin.flux[1] / thin.flux[0]
+    assert opaque.flux_in_field[1:] == pytest.approx(opaque.flux[1:], rel=1e-4)
+    # Ray by ray: where the direct image covers the second crossing, order 1 is dark.
+    north, east, _ = opaque.axes
+    hit = rt.trace(-east, np.full_like(east, north[30]), inclination=math.radians(30.0), orders=1)
+    covered = (hit.radius[0] > 7.5) & (hit.radius[0] < 35.0)
+    assert covered.sum() > 20
+    assert np.all(opaque.intensity[1, 30, covered] == 0.0)
 
 
 def test_light_outside_the_field_and_thin_orders_are_reported_with_the_figure(write_scene):

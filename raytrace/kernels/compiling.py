@@ -21,9 +21,9 @@ import llvmlite.binding
 import numba
 import numpy as np
 
-# "contract" (fused multiply-add), "arcp" and "nsz" change last digits only; full fast-math would assume that no value is
-# NaN or infinite and remove the guards that a ray at the horizon needs.
-FAST_MATH = {"contract", "arcp", "nsz"}
+# No fast-math flag at all. Even "contract" (fused multiply-add) makes results depend on what was inlined into what, and a kernel
+# that was just compiled inlines differently from the same one loaded from the cache: two workers would disagree in the last digit.
+FAST_MATH = False
 
 
 @cache
@@ -61,7 +61,7 @@ def _writable_base() -> Path:
 
 
 def kernel(
-    *, parallel: bool = False, inline: bool = False, strict: bool = False
+    *, parallel: bool = False, inline: bool = False, strict: bool = True
 ) -> Callable[[Callable[..., Any]], Any]:
     """Compile a function with the project's one set of numba options.
 
@@ -71,8 +71,6 @@ def kernel(
         Spread `numba.prange` loops over the cores that numba was given.
     inline : bool
         Inline the function into its callers at the level of numba's own representation.
-    strict : bool
-        No fast-math flag at all: for error-free sums and products, which a reordering would break.
     """
 
     def compile_(function: Callable[..., Any]) -> Any:
@@ -86,7 +84,7 @@ def kernel(
                 parallel=parallel,
                 nogil=True,
                 error_model="numpy",
-                fastmath=False if strict else FAST_MATH,
+                fastmath=FAST_MATH,
                 inline="always" if inline else "never",
             )
         finally:

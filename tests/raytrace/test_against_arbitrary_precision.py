@@ -1,0 +1,77 @@
+"""Crossing radii and delays against 50-digit arithmetic at the exact floating-point screen positions.
+
+Values frozen in tests/oracles/crossings.json with the generator beside them; κ = |∂ln r/∂ln b| + ψ |∂ln r/∂ψ| is how much of a
+rounding error of the input a radius cannot help to show.
+"""
+
+from __future__ import annotations
+
+import json
+import math
+from pathlib import Path
+
+import numpy as np
+import pytest
+from hypothesis import given
+from hypothesis import strategies as st
+
+import raytrace as rt
+
+ROWS = json.loads((Path(__file__).parent.parent / "oracles" / "crossings.json").read_text(encoding="ascii"))
+EPSILON = float(np.finfo(np.float64).eps)
+RADIUS_FLOOR, ROUNDINGS = 1e-12, 8.0
+DELAY_TOLERANCE = 1e-9
+
+
+def traced(row):
+    return rt.trace(row["alpha"], row["beta"], inclination=row["inclination"], orders=6)
+
+
+def test_statuses_agree_with_arbitrary_precision():
+    for row in ROWS:
+        assert [rt.RayStatus(value).name for value in traced(row).status] == row["status"], row
+
+
+def test_radii_agree_to_a_few_roundings_of_the_input():
+    worst = 0.0
+    for row in ROWS:
+        hit = traced(row)
+        for order, (radius, kappa) in enumerate(zip(row["radius"], row["kappa"], strict=True)):
+            error = abs(hit.radius[order] / float(radius) - 1.0)
+            worst = max(worst, error / max(RADIUS_FLOOR, ROUNDINGS * EPSILON * kappa))
+            assert error <= max(RADIUS_FLOOR, ROUNDINGS * EPSILON * kappa), (row, order)
+    assert worst > 0.0
+    print(f"worst radius error: {worst:.2g} of what is allowed")
+
+
+def test_delays_agree_to_one_part_in_a_thousand_million():
+    """A delay may not be better than the radius that it belongs to: the same κ ε of the radius is allowed on top."""
+    for row in ROWS:
+        hit = traced(row)
+        for order, (delay, kappa) in enumerate(zip(row["delay"], row["kappa"], strict=True)):
+            exact = float(delay)
+            radius = float(row["radius"][order])
+            own = DELAY_TOLERANCE * max(1.0, abs(exact))
+            inherited = ROUNDINGS * EPSILON * kappa * radius / (1.0 - 2.0 / radius)
+            assert abs(hit.delay[order] - exact) <= own + inherited, (row, order)
+
+
+@given(
+    b=st.floats(-3.0, 6.0).map(lambda x: 10.0**x),
+    angle=st.floats(-math.pi, math.pi),
+    inclination=st.floats(0.0, math.pi),
+    orders=st.integers(1, 6),
+)
+def test_every_ray_ends_in_a_named_status(b, angle, inclination, orders):
+    hit = rt.trace(b * math.cos(angle), b * math.sin(angle), inclination=inclination, orders=orders)
+    for order in range(orders):
+        crossed = hit.status[order] == rt.RayStatus.CROSSED
+        for values in (hit.radius[order], hit.azimuth[order], hit.delay[order], *hit.momentum[:, order]):
+            assert np.isfinite(values) == crossed
+        assert not crossed or hit.radius[order] > 2.0
+    assert rt.RayStatus(hit.fate) in (rt.RayStatus.ESCAPED, rt.RayStatus.CAPTURED)
+
+
+@pytest.mark.parametrize("status", list(rt.RayStatus))
+def test_every_status_has_its_sentence(status):
+    assert status.sentence.startswith("the ray")

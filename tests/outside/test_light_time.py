@@ -65,7 +65,7 @@ def test_light_time_agrees_with_quadrature_of_the_metric():
     def rate(r: float, b: float) -> float:
         return 1.0 / ((1.0 - 2.0 / r) * math.sqrt(1.0 - b**2 / r**2 * (1.0 - 2.0 / r)))
 
-    for near, far, b in ((2.1, 30.0, 4.0), (6.0, 80.0, 5.5), (2.05, 2.4, 6.0)):
+    for near, far, b in ((2.1, 30.0, 4.0), (6.0, 80.0, 5.5), (2.05, 2.2, 6.0)):
         expected = quad(rate, near, far, args=(b,), epsabs=0.0, epsrel=1e-12, limit=200)[0]
         assert rt.light_time(near, far, b) == pytest.approx(expected, rel=1e-9)
 

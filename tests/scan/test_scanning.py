@@ -147,7 +147,7 @@ def test_the_target_is_checked_before_the_work_starts(plan, tmp_path, monkeypatc
 def test_a_truncated_product_is_refused_in_one_sentence(plan, alone, tmp_path):
     cut = tmp_path / "cut.h5"
     cut.write_bytes((plan.parent / "alone.h5").read_bytes()[:9000])
-    with pytest.raises(InputError, match="readable HDF5|damaged"):
+    with pytest.raises(InputError, match=r"readable HDF5|damaged"):
         rw.ScanTable.open(cut)
     with h5py.File(tmp_path / "image.h5", "w") as file:
         file.attrs["product"] = "image"

@@ -53,23 +53,35 @@ def _parser() -> argparse.ArgumentParser:
     _add_scan(verbs)
     _add_compare(verbs)
     _add_new(verbs)
-    verbs.add_parser("schema", help="print the JSON Schema of scene files, for editors that complete and check")
+    verbs.add_parser(
+        "schema", help="print the JSON Schema of scene files, for editors that complete and check"
+    )
     return parser
 
 
 def _add_render(verbs: argparse._SubParsersAction[argparse.ArgumentParser]) -> None:
-    parser = verbs.add_parser("render", help="render a scene file into an image (HDF5) with a picture beside it")
+    parser = verbs.add_parser(
+        "render", help="render a scene file into an image (HDF5) with a picture beside it"
+    )
     parser.add_argument("scene", help="scene file (TOML)")
-    parser.add_argument("--maps", action="store_true", help="also store crossing radius, redshift factor and delay")
+    parser.add_argument(
+        "--maps", action="store_true", help="also store crossing radius, redshift factor and delay"
+    )
     parser.add_argument("--fits", action="store_true", help="also write a FITS image with a celestial WCS")
     _add_common(parser, "outputs/<scene name>.h5")
 
 
 def _add_measure(verbs: argparse._SubParsersAction[argparse.ArgumentParser]) -> None:
-    parser = verbs.add_parser("measure", help="measure the ring on images (our HDF5, or FITS with a celestial WCS)")
+    parser = verbs.add_parser(
+        "measure", help="measure the ring on images (our HDF5, or FITS with a celestial WCS)"
+    )
     parser.add_argument("images", nargs="+", metavar="IMAGE")
-    parser.add_argument("--resolution", required=True, help='FWHM to bring the image to, such as "20 uas" or "5 M"')
-    parser.add_argument("--centre", nargs=2, metavar=("EAST", "NORTH"), help="fix the centre instead of finding it")
+    parser.add_argument(
+        "--resolution", required=True, help='FWHM to bring the image to, such as "20 uas" or "5 M"'
+    )
+    parser.add_argument(
+        "--centre", nargs=2, metavar=("EAST", "NORTH"), help="fix the centre instead of finding it"
+    )
     parser.add_argument(
         "--lengths",
         choices=("relative", "published"),

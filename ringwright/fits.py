@@ -276,6 +276,7 @@ def _header(
     )
     header = fits.Header()
     header["OBJECT"] = name
+    header["ORIGIN"] = "ringwright"
     header["BUNIT"] = "Jy/pixel"
     header["RADESYS"] = "ICRS"
     for k, (kind, value, delta, pixel, unit) in enumerate(axes, start=1):

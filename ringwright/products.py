@@ -28,6 +28,9 @@ FORMAT_VERSION = 1
 CHUNK = 128
 COMPRESSION = {"compression": "gzip", "compression_opts": 2, "shuffle": True, "fletcher32": True}
 OUTPUTS = Path("outputs")
+# Pictures and FITS files say in their first bytes who wrote them and for what name.
+MARK = b"ringwright"
+HEAD_BYTES = 8192
 
 
 def default_output(name: str, suffix: str) -> Path:
@@ -59,6 +62,28 @@ def check_target(path: str | Path, kind: str, name: str, *, replace: bool) -> Pa
             f"{target} exists and is {what}, so it is kept; name another file with --out, or say --replace"
         )
     return target
+
+
+def check_companion(path: str | Path, name: str, *, replace: bool) -> None:
+    """Refuse a picture or FITS file that we did not write for the same name.
+
+    Raises
+    ------
+    InputError
+        If the file exists, does not carry our mark and the name in its head, and `replace` is not set.
+    """
+    target = Path(path)
+    if replace or not target.exists():
+        return
+    head = b""
+    if target.is_file():
+        with target.open("rb") as file:
+            head = file.read(HEAD_BYTES)
+    if not (MARK in head and name.encode() in head):
+        raise InputError(
+            f"{target} exists and was not written by ringwright for '{name}', so it is kept; name another file with "
+            "--out, or say --replace"
+        )
 
 
 @contextmanager

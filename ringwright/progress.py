@@ -25,7 +25,13 @@ def reporting(what: str) -> Iterator[Report]:
     from rich.console import Console
     from rich.progress import BarColumn, MofNCompleteColumn, Progress, TextColumn, TimeRemainingColumn
 
-    columns = (TextColumn(what), BarColumn(), MofNCompleteColumn(), TimeRemainingColumn(), TextColumn("{task.fields[note]}"))
+    columns = (
+        TextColumn(what),
+        BarColumn(),
+        MofNCompleteColumn(),
+        TimeRemainingColumn(),
+        TextColumn("{task.fields[note]}"),
+    )
     with Progress(*columns, console=Console(stderr=True)) as bar:
         task = bar.add_task(what, total=None, note="")
 

@@ -63,10 +63,10 @@ def parse(text: str, kind: str) -> float:
         return value
     try:
         return float(u.Quantity(value, name).to_value(unit))
-    except (ValueError, TypeError):
-        raise ValueError(f"'{name}' is not a unit; write {_a(kind)} like \"{example}\"") from None
     except u.UnitConversionError:
         raise ValueError(f"'{text}' is not {_a(kind)}; write it like \"{example}\"") from None
+    except (ValueError, TypeError):
+        raise ValueError(f"'{name}' is not a unit; write {_a(kind)} like \"{example}\"") from None
 
 
 def parse_given(value: object, kind: str) -> float:

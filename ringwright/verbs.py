@@ -25,6 +25,8 @@ def render(options: argparse.Namespace) -> int:
     scene = load_scene(options.scene)
     target = Path(options.out or products.default_output(scene.name, ".h5"))
     products.check_target(target, KIND, scene.name, replace=options.replace)
+    for suffix in (".png", ".fits") if options.fits else (".png",):
+        products.check_companion(target.with_suffix(suffix), scene.name, replace=options.replace)
     image = render_scene(scene, maps=options.maps)
     written = [image.save(target, replace=options.replace), draw_image(image, target.with_suffix(".png"))]
     if options.fits:
@@ -59,7 +61,10 @@ def measure(options: argparse.Namespace) -> int:
             table.write(temporary, format="ascii.ecsv", overwrite=True)
         written.append(options.out)
     if options.picture:
-        written += [_ring_picture(path, ring) for path, ring in zip(options.images, rings, strict=True)]
+        written += [
+            _ring_picture(path, ring, options.replace)
+            for path, ring in zip(options.images, rings, strict=True)
+        ]
     if options.json:
         print_json({"rings": [ring.to_json() for ring in rings], "files": [str(path) for path in written]})
         return DONE
@@ -98,12 +103,14 @@ def compare(options: argparse.Namespace) -> int:
     """Compare an observation with scans and draw the figures."""
     from ringwright.comparing import compare as compare_ring
     from ringwright.comparing import summary
-    from ringwright.figures.comparison import draw_comparison
+    from ringwright.figures.comparison import draw_comparison, targets
     from ringwright.observation import load_observation
 
     observation = load_observation(options.observation)
-    answer = compare_ring(observation, *options.scans)
     stem = Path(options.out) if options.out else products.default_output(observation.name, "")
+    for target in targets(stem):
+        products.check_companion(target, observation.name, replace=options.replace)
+    answer = compare_ring(observation, *options.scans)
     written = draw_comparison(answer, stem)
     if options.json:
         print_json({**answer.to_json(), "files": [str(path) for path in written]})
@@ -129,10 +136,11 @@ def schema(options: argparse.Namespace) -> int:
     return DONE
 
 
-def _ring_picture(path: str, ring: Any) -> Path:
+def _ring_picture(path: str, ring: Any, replace: bool) -> Path:
     from ringwright.figures.ring import picture
 
     target = products.default_output(Path(path).stem, "-ring.png")
+    products.check_companion(target, ring.name, replace=replace)
     return picture(path, ring, target)
 
 

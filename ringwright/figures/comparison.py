@@ -61,13 +61,22 @@ def draw_comparison(comparison: Comparison, stem: str | Path) -> list[Path]:
     if comparison.curves.theta_g is None:
         return []
     pictures = {"posterior": posteriors, "factor": factors, "diameter": diameters}
-    return [_write(draw(comparison), Path(f"{stem}-{name}.png")) for name, draw in pictures.items()]
+    name = comparison.observation.name
+    return [
+        _write(draw(comparison), path, name)
+        for draw, path in zip(pictures.values(), targets(stem), strict=True)
+    ]
 
 
-def _write(figure: Figure, path: Path) -> Path:
+def targets(stem: str | Path) -> list[Path]:
+    """The files that `draw_comparison` writes."""
+    return [Path(f"{stem}-{name}.png") for name in ("posterior", "factor", "diameter")]
+
+
+def _write(figure: Figure, path: Path, name: str) -> Path:
     FigureCanvasAgg(figure)
     with written_whole(path) as temporary:
-        figure.savefig(temporary, format="png", dpi=DPI, metadata={"Software": "ringwright"})
+        figure.savefig(temporary, format="png", dpi=DPI, metadata={"Software": "ringwright", "Title": name})
     return path
 
 

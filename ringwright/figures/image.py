@@ -14,7 +14,7 @@ from matplotlib.backends.backend_agg import FigureCanvasAgg
 from matplotlib.figure import Figure
 
 from raytrace.contract import Array
-from ringwright.figures.ring import COLOUR_MAP, DPI, mark_sky
+from ringwright.figures.sky import COLOUR_MAP, DPI, mark_sky
 from ringwright.image import Image
 from ringwright.products import written_whole
 
@@ -55,7 +55,9 @@ def draw_image(image: Image, path: str | Path) -> Path:
     colours = figure.colorbar(picture, cax=figure.add_axes((0.845, 0.115, 0.03, 0.825)))
     colours.set_label(label)
     with written_whole(path) as temporary:
-        figure.savefig(temporary, format="png", dpi=DPI, metadata={"Software": "ringwright"})
+        figure.savefig(
+            temporary, format="png", dpi=DPI, metadata={"Software": "ringwright", "Title": image.name}
+        )
     return Path(path)
 
 

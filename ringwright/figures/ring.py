@@ -16,18 +16,14 @@ from matplotlib.axes import Axes
 from matplotlib.backends.backend_agg import FigureCanvasAgg
 from matplotlib.figure import Figure
 from matplotlib.patches import Annulus, Circle
-from matplotlib.patheffects import withStroke
 from numpy.typing import NDArray
 
 from ringwright.errors import InputError
+from ringwright.figures.sky import COLOUR_MAP, DPI, MARK, OUTLINE, mark_sky
 from ringwright.products import written_whole
 from ringwright.ring.measuring import at_resolution
 
-COLOUR_MAP = "cividis"
-MARK = "#ffffff"
-OUTLINE = [withStroke(linewidth=3.0, foreground="#00000066")]  # keeps white lines legible on bright light
 WINDOW = 1.6  # half the width of the picture in diameters
-DPI = 150
 
 
 def draw_ring(image: NDArray[np.float64], pixel: float, unit: str, ring: Any, path: str | Path) -> Path:
@@ -59,7 +55,9 @@ def draw_ring(image: NDArray[np.float64], pixel: float, unit: str, ring: Any, pa
     mark_sky(axes, shown)
     figure.text(0.03, 0.128, _caption(ring, shown), fontsize=9, va="top", linespacing=1.5, color="#202020")
     with written_whole(path) as temporary:
-        figure.savefig(temporary, format="png", dpi=DPI, metadata={"Software": "ringwright"})
+        figure.savefig(
+            temporary, format="png", dpi=DPI, metadata={"Software": "ringwright", "Title": ring.name}
+        )
     return Path(path)
 
 
@@ -132,35 +130,6 @@ def _frame(axes: Axes, image: NDArray[np.float64], pixel: float, ring: Any) -> N
     axes.set_xlim(east + half, east - half)
     axes.set_ylim(north - half, north + half)
     axes.set_aspect("equal")
-
-
-def mark_sky(axes: Axes, unit: str) -> None:
-    """Scale bar at the lower right, north and east marks at the lower left."""
-    left, right = axes.get_xlim()
-    bottom, top = axes.get_ylim()
-    side = top - bottom
-    bar = _round_length(0.25 * side)
-    end = right + 0.06 * side
-    axes.plot([end + bar, end], [bottom + 0.06 * side] * 2, color=MARK, linewidth=2.5, solid_capstyle="butt")
-    axes.text(end + 0.5 * bar, bottom + 0.075 * side, f"{bar:g} {unit}", color=MARK, ha="center", va="bottom")
-    corner = left - 0.18 * side, bottom + 0.06 * side
-    style = {"arrowstyle": "-|>", "color": MARK, "linewidth": 1.4, "shrinkA": 0.0, "shrinkB": 0.0}
-    for tip, name, along in (((0.0, 0.11), "N", (0.0, 0.14)), ((0.11, 0.0), "E", (0.135, 0.0))):
-        axes.annotate(
-            "",
-            (corner[0] + tip[0] * side, corner[1] + tip[1] * side),
-            corner,
-            arrowprops=style,
-            annotation_clip=False,
-        )
-        place = corner[0] + along[0] * side, corner[1] + along[1] * side
-        axes.text(*place, name, color=MARK, ha="center", va="center", fontsize=10)
-
-
-def _round_length(length: float) -> float:
-    """The largest 1, 2 or 5 times a power of ten that is not longer."""
-    power = 10.0 ** math.floor(math.log10(length))
-    return max(step * power for step in (1.0, 2.0, 5.0) if step * power <= length)
 
 
 def _caption(ring: Any, unit: str) -> str:

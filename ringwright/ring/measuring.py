@@ -243,10 +243,8 @@ def length_in(given: Any, unit: units.UnitBase, what: str) -> float:
     """
     on_sky = unit.physical_type == "angle"
     try:
-        if isinstance(given, str) and given.split()[-1:] == ["M"]:
-            value = units.Quantity(float(given.split()[0]))
-        else:
-            value = units.Quantity(given)
+        in_m = isinstance(given, str) and given.split()[-1:] == ["M"]
+        value = units.Quantity(float(given.split()[0]) if in_m else given)
         if on_sky or value.unit != units.dimensionless_unscaled:
             return float(value.to_value(unit))
         return float(value.value)

@@ -15,17 +15,27 @@ from concurrent.futures import FIRST_COMPLETED, Executor, Future, ProcessPoolExe
 from contextlib import contextmanager
 from typing import Any
 
-SERIAL = {"NUMBA_NUM_THREADS": "1", "OMP_NUM_THREADS": "1", "OPENBLAS_NUM_THREADS": "1", "MKL_NUM_THREADS": "1"}
+SERIAL = {
+    "NUMBA_NUM_THREADS": "1",
+    "OMP_NUM_THREADS": "1",
+    "OPENBLAS_NUM_THREADS": "1",
+    "MKL_NUM_THREADS": "1",
+}
 # Tasks in flight per worker: enough that none waits, few enough that an interruption loses little.
 WINDOW = 3
 
 
 @contextmanager
-def process_pool(workers: int, initializer: Callable[..., None], initargs: tuple[Any, ...]) -> Iterator[Executor]:
+def process_pool(
+    workers: int, initializer: Callable[..., None], initargs: tuple[Any, ...]
+) -> Iterator[Executor]:
     """An executor of spawned processes that need nothing from the caller's `__main__`."""
     with _serial_environment(), _hidden_main():
         pool = ProcessPoolExecutor(
-            workers, multiprocessing.get_context("spawn"), initializer=_start, initargs=(initializer, initargs)
+            workers,
+            multiprocessing.get_context("spawn"),
+            initializer=_start,
+            initargs=(initializer, initargs),
         )
         try:
             yield pool

@@ -72,7 +72,9 @@ class ScanTable:
     asymmetry: Array
     central_brightness: Array
     outcome: NDArray[np.int8]  # RingOutcome; RING = 0
-    halfway_error: Array  # (scene,) largest relative error of the interpolated diameter half-way between nodes
+    halfway_error: (
+        Array  # (scene,) largest relative error of the interpolated diameter half-way between nodes
+    )
     base: dict[str, Any] = field(default_factory=dict)  # resolved base scene
     provenance: dict[str, Any] = field(default_factory=dict)
     path: str = ""
@@ -122,7 +124,9 @@ class ScanTable:
         file.attrs["family"] = self.family
         described = []
         for parameter in self.parameters:
-            entry = {name: getattr(parameter, name) for name in ("key", "kind", "unit", "low", "high", "labels")}
+            entry = {
+                name: getattr(parameter, name) for name in ("key", "kind", "unit", "low", "high", "labels")
+            }
             described.append(entry)
             units = "1" if parameter.unit == "M" else parameter.unit or "1"
             long_name = f"{parameter.key}{' [GM/c^2]' if parameter.unit == 'M' else ''}"

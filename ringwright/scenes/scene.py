@@ -105,7 +105,8 @@ class Scene:
 def key_path(path: str, data: dict[str, Any]) -> lines.Path:
     """A dotted key path as parts, with the index of a single emitter filled in."""
     parts: list[str | int] = [int(part) if part.isdigit() else part for part in path.split(".")]
-    if parts[0] == "emitter" and len(data.get("emitter", [])) == 1 and (len(parts) < 2 or parts[1] != 0):
+    single = parts[0] == "emitter" and len(data.get("emitter", [])) == 1
+    if single and not (len(parts) > 1 and isinstance(parts[1], int)):
         parts.insert(1, 0)
     return tuple(parts)
 

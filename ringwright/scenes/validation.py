@@ -97,6 +97,8 @@ def dotted(path: Iterable[str | int]) -> str:
 
 def _worded(document: Document, error: Mapping[str, Any]) -> Problem:
     path = _in_file(document.data, error["loc"], absent=error["type"] == "missing")
+    if error["type"] == "union_tag_invalid":
+        path = (*path, "kind")
     given = error["input"]
     context = error.get("ctx", {})
     words = _WORDS.get(error["type"])

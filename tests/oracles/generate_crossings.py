@@ -63,12 +63,25 @@ class Orbit:
         return 2 * self._inward(1 / self.u2) - self._inward(radius)
 
     def _inward(self, radius: mp.mpf) -> mp.mpf:
+        """−r − 2 ln(r/2 − 1) + ∫ [1/√W − 1]/(1 − 2/r) dr to infinity, by r = r0 + x² from the closest approach r0."""
+        r0 = 1 / self.u2 if self.escapes else mp.mpf(3)
+
         def excess(r: mp.mpf) -> mp.mpf:
             w = 1 - self.b**2 / r**2 * (1 - 2 / r)
             return (1 / mp.sqrt(abs(w)) - 1) / (1 - 2 / r)  # rounding may take w below 0 at its zero
 
-        places = sorted({radius, *(p for p in (mp.mpf(3), self.b, 10 * self.b) if p > radius)})
-        return -radius - 2 * mp.log(radius / 2 - 1) + mp.quad(excess, [*places, mp.inf])
+        def outside(x: mp.mpf) -> mp.mpf:
+            return 2 * x * excess(r0 + x * x)
+
+        start = mp.sqrt(max(radius - r0, mp.mpf(0)))
+        scale = mp.sqrt(self.b) + 1
+        places = [
+            start,
+            *(start + scale * factor for factor in (mp.mpf(1) / 1000, mp.mpf(1) / 30, 1, 30)),
+            mp.inf,
+        ]
+        inner = mp.quad(excess, [radius, r0]) if radius < r0 and not self.escapes else mp.mpf(0)
+        return -radius - 2 * mp.log(radius / 2 - 1) + inner + mp.quad(outside, places)
 
 
 def swept_angle(alpha: mp.mpf, beta: mp.mpf, inclination: float) -> mp.mpf:

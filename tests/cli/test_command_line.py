@@ -1,0 +1,220 @@
+"""The command line as a person meets it: answers on standard output, one clear message and exit status 2 for bad input."""
+
+from __future__ import annotations
+
+import json
+import subprocess
+import sys
+
+import numpy as np
+import pytest
+
+import ringwright as rw
+from ringwright.cli import main
+
+
+@pytest.fixture
+def scene(write_scene, monkeypatch, tmp_path):
+    monkeypatch.chdir(tmp_path)
+    sky = 'mass = "9.2e9 solMass"\ndistance = "21 Mpc"'
+    more = '[source]\ntotal_flux = "0.6 Jy"\nright_ascension = "10 deg"\ndeclination = "5 deg"'
+    return str(write_scene(hole=sky, more=more, field="200 uas", name="seen"))
+
+
+def refused(capsys, *arguments):
+    """The message of a call that must end with exit status 2."""
+    assert main([str(argument) for argument in arguments]) == 2
+    captured = capsys.readouterr()
+    assert "Traceback" not in captured.err
+    assert captured.out == ""
+    return captured.err
+
+
+def test_render_writes_a_product_and_a_picture(scene, capsys, tmp_path):
+    assert main(["render", scene]) == 0
+    assert "order 0:" in capsys.readouterr().out
+    assert rw.Image.open(tmp_path / "outputs" / "seen.h5").name == "seen"
+    assert (tmp_path / "outputs" / "seen.png").read_bytes().startswith(b"\x89PNG")
+
+
+def test_render_prints_one_json_object_and_writes_fits_and_maps(scene, capsys, tmp_path):
+    assert main(["render", scene, "--json", "--fits", "--maps", "--out", "x.h5"]) == 0
+    answer = json.loads(capsys.readouterr().out)
+    assert answer["flux_per_order"]["unit"] == "Jy"
+    assert sorted(answer["files"]) == ["x.fits", "x.h5", "x.png"]
+    assert "delay" in rw.Image.open("x.h5").maps
+    assert main(["render", scene, "--fits", "--out", "x.h5"]) == 0  # our own files are replaced
+
+
+def test_foreign_files_are_kept(scene, capsys, tmp_path):
+    for name in ("x.h5", "x.png", "x.fits"):
+        for old in tmp_path.glob("x.*"):
+            old.unlink()
+        (tmp_path / name).write_text("precious")
+        assert f"{name} exists" in refused(capsys, "render", scene, "--out", "x.h5", "--fits")
+        assert (tmp_path / name).read_text() == "precious"
+        assert [path.name for path in tmp_path.glob("x.*")] == [name]
+    assert main(["render", scene, "--out", "x.h5", "--fits", "--replace"]) == 0
+
+
+def test_a_wrong_scene_gives_file_line_and_key(scene, capsys, tmp_path):
+    text = (tmp_path / "seen.toml").read_text().replace('"30 deg"', "30")
+    (tmp_path / "wrong.toml").write_text(text)
+    message = refused(capsys, "render", "wrong.toml")
+    assert "wrong.toml:7: view.inclination: 30 has no unit" in message
+    assert refused(capsys, "render", "absent.toml").count("\n") == 1
+    assert not (tmp_path / "outputs").exists()
+
+
+def test_measure_reads_products_and_fits_alike(scene, capsys, tmp_path):
+    main(["render", scene, "--fits", "--out", "x.h5"])
+    capsys.readouterr()
+    assert (
+        main(
+            [
+                "measure",
+                "x.h5",
+                "x.fits",
+                "--resolution",
+                "20 uas",
+                "--json",
+                "--out",
+                "rings.ecsv",
+                "--picture",
+            ]
+        )
+        == 0
+    )
+    answer = json.loads(capsys.readouterr().out)
+    first, second = (ring["diameter"]["value"] for ring in answer["rings"])
+    assert first == pytest.approx(second, rel=1e-4)
+    assert "diameter" in (tmp_path / "rings.ecsv").read_text()
+    assert (tmp_path / "outputs" / "x-ring.png").is_file()
+    assert "exists" in refused(capsys, "measure", "x.h5", "--resolution", "20 uas", "--out", "rings.ecsv")
+    assert main(["measure", "x.h5", "--resolution", "20 uas"]) == 0
+    said = capsys.readouterr().out
+    assert "diameter" in said
+    assert "not the edge of the shadow" in said
+
+
+def test_no_ring_is_an_answer(scene, capsys, tmp_path):
+    main(["render", scene, "--out", "x.h5"])
+    capsys.readouterr()
+    assert main(["measure", "x.h5", "--resolution", "90 uas", "--json"]) == 0
+    (ring,) = json.loads(capsys.readouterr().out)["rings"]
+    assert ring["diameter"]["value"] is None
+    assert ring["reason"]
+
+
+def test_images_that_cannot_be_measured_are_refused(scene, capsys, tmp_path):
+    main(["render", scene, "--fits", "--out", "x.h5"])
+    capsys.readouterr()
+    (tmp_path / "cut.fits").write_bytes((tmp_path / "x.fits").read_bytes()[:4000])
+    (tmp_path / "cut.h5").write_bytes((tmp_path / "x.h5").read_bytes()[:4000])
+    for name in ("cut.fits", "cut.h5", "seen.toml", "absent.fits"):
+        assert name in refused(capsys, "measure", name, "--resolution", "20 uas")
+    assert "does not fit" in refused(capsys, "measure", "x.h5", "--resolution", "20 Jy")
+    from astropy.io import fits
+
+    with fits.open("x.fits") as file:
+        file[0].header.update({"BMAJ": 5e-9, "BMIN": 3e-9, "BPA": 10.0, "BUNIT": "Jy/beam"})
+        file.writeto("beam.fits")
+    assert "ellip" in refused(capsys, "measure", "beam.fits", "--resolution", "20 uas")
+
+
+SCAN = """name = "few"
+scene = "SCENE"
+[sampling]
+scenes = 4
+[image]
+field = "44 M"
+pixels = 96
+[[vary]]
+key = "emitter.profile.inner"
+range = ["2 M", "4 M"]
+"""
+
+
+def test_from_starter_files_to_a_mass(capsys, monkeypatch, tmp_path):
+    """The README's path, with fewer and smaller scenes."""
+    monkeypatch.chdir(tmp_path)
+    for kind in ("observation", "scene", "scan"):
+        assert main(["new", kind, f"{kind}.toml"]) == 0
+    assert "exists and is kept" in refused(capsys, "new", "scan", "scan.toml")
+    text = (tmp_path / "scan.toml").read_text().replace("scenes = 256", "scenes = 8").replace("224", "96")
+    (tmp_path / "scan.toml").write_text(text)
+    assert main(["scan", "scan.toml", "--workers", "1"]) == 0
+    assert main(["compare", "observation.toml", "outputs/my-scan.h5"]) == 0
+    said = capsys.readouterr().out
+    for words in (
+        "θ_g =",
+        "± measurement ± emission ± distance",
+        "not a shadow diameter",
+        "prior is not a measurement",
+    ):
+        assert words in said
+    assert main(["compare", "observation.toml", "outputs/my-scan.h5", "--json"]) == 0
+    answer = json.loads(capsys.readouterr().out)
+    assert answer["ring_only"]["mass"]["unit"] == "solMass"
+    assert {"low68", "high68", "low95", "high95", "value", "unit"} <= answer["ring_only"]["theta_g"].keys()
+    assert len(list((tmp_path / "outputs").glob("my-observation-*.png"))) == 3
+
+
+def test_a_scan_product_that_cannot_be_read_is_refused(scene, capsys, tmp_path):
+    (tmp_path / "scan.toml").write_text(SCAN.replace("SCENE", "seen.toml"))
+    assert main(["scan", "scan.toml", "--workers", "1", "--json"]) == 0
+    assert json.loads(capsys.readouterr().out)["scenes"] == 4
+    main(["new", "observation", "o.toml"])
+    capsys.readouterr()
+    whole = (tmp_path / "outputs" / "few.h5").read_bytes()
+    (tmp_path / "cut.h5").write_bytes(whole[: len(whole) // 2])
+    assert "cut.h5" in refused(capsys, "compare", "o.toml", "cut.h5")
+    main(["render", scene])
+    capsys.readouterr()
+    assert "a scan product is needed" in refused(capsys, "compare", "o.toml", "outputs/seen.h5")
+    assert "absent.h5" in refused(capsys, "compare", "o.toml", "absent.h5")
+    assert not list((tmp_path / "outputs").glob("my-observation*"))
+
+
+def test_help_version_and_schema(capsys):
+    for option in ("--help", "--version"):
+        with pytest.raises(SystemExit) as stop:
+            main([option])
+        assert stop.value.code == 0
+    assert "ring diameter is not a shadow diameter" in capsys.readouterr().out
+    assert main(["schema"]) == 0
+    assert json.loads(capsys.readouterr().out)["title"] == "SceneFile"
+    with pytest.raises(SystemExit) as stop:
+        main(["polish"])
+    assert stop.value.code == 2
+
+
+def test_render_imports_nothing_heavy_that_it_does_not_need(scene):
+    code = "import sys; from ringwright.cli import main; main(sys.argv[1:]); print(sorted(sys.modules))"
+    run = subprocess.run(
+        [sys.executable, "-c", code, "render", scene], capture_output=True, text=True, check=True
+    )
+    for heavy in (
+        "matplotlib.pyplot",
+        "scipy.interpolate",
+        "astropy.wcs",
+        "astropy.io.fits",
+        "pandas",
+        "scipy.stats",
+    ):
+        assert f"'{heavy}'" not in run.stdout, heavy
+
+
+def test_help_imports_no_numbers():
+    code = "import sys\nfrom ringwright.cli import main\ntry:\n  main(['--help'])\nexcept SystemExit: pass\nprint(sorted(sys.modules))"
+    run = subprocess.run([sys.executable, "-c", code], capture_output=True, text=True, check=True)
+    for heavy in ("numpy", "astropy", "numba", "h5py", "pydantic"):
+        assert f"'{heavy}'" not in run.stdout, heavy
+
+
+def test_an_interruption_ends_with_130(scene, capsys, monkeypatch):
+    import ringwright.verbs
+
+    monkeypatch.setattr(ringwright.verbs, "render", lambda options: (_ for _ in ()).throw(KeyboardInterrupt))
+    assert main(["render", scene]) == 130
+    assert np.all([word in capsys.readouterr().err for word in ("interrupted",)])

@@ -20,12 +20,18 @@ def main() -> int:
         if script.name in NOT_BENCHMARKS:
             continue
         print(f"# {script.name}", flush=True)
-        run = subprocess.run([sys.executable, script, *sys.argv[1:]], capture_output=True, text=True, check=False)
+        run = subprocess.run(
+            [sys.executable, script, *sys.argv[1:]], capture_output=True, text=True, check=False
+        )
         print(run.stdout, end="", flush=True)
         if run.returncode:
             print(run.stderr, file=sys.stderr)
             failed.append(script.name)
-        rows += [line for line in run.stdout.splitlines() if line.count(" | ") == 3 and not line.startswith("figure")]
+        rows += [
+            line
+            for line in run.stdout.splitlines()
+            if line.count(" | ") == 3 and not line.startswith("figure")
+        ]
     print("\nfigure | required | reached | met")
     print("\n".join(rows))
     if failed:

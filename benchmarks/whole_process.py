@@ -63,7 +63,12 @@ def main() -> None:
             "render", str(scene), "--out", out, environment={"RINGWRIGHT_KERNELS": str(folder / "kernels")}
         )
         warm = median("render", str(scene), "--out", out)
-        row("render 256² cold minus warm: compiling, once", "< 15 s", f"{cold - warm:.1f} s", cold - warm < 15.0)
+        row(
+            "render 256² cold minus warm: compiling, once",
+            "< 15 s",
+            f"{cold - warm:.1f} s",
+            cold - warm < 15.0,
+        )
         row("render 256², warm, whole process", "< 1.5 s", f"{warm:.2f} s", warm < 1.5)
         shown = median("--help")
         row("--help, whole process", "< 0.5 s", f"{shown:.2f} s", shown < 0.5)

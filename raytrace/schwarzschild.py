@@ -16,6 +16,8 @@ from numpy.typing import ArrayLike
 from raytrace.contract import Array, CircularOrbit, Hit, Metric
 
 CRITICAL_RADIUS = math.sqrt(27.0)
+# |cos i| below this is an exactly edge-on view: half a unit in the last place of π/2.
+EDGE_ON = 1e-16
 
 
 @dataclass(frozen=True)
@@ -76,10 +78,14 @@ class Schwarzschild:
     ) -> Hit:
         """Trace checked one-dimensional float64 arrays; see `raytrace.trace`."""
         from raytrace.kernels import threads
+        from raytrace.kernels.lanes import crossing_radii
         from raytrace.kernels.schwarzschild import trace_rays
 
         shape = (orders, alpha.size)
         empty = (0, alpha.size)
+        x, y = np.ascontiguousarray(alpha), np.ascontiguousarray(beta)
+        cosine, sine = math.cos(inclination), math.sin(inclination)
+        cosine = 0.0 if abs(cosine) < EDGE_ON else cosine
         radius = np.full(shape, np.nan)
         turned = np.full(shape if azimuth else empty, np.nan)
         later = np.full(shape if delay else empty, np.nan)
@@ -87,18 +93,10 @@ class Schwarzschild:
         status = np.zeros(shape, dtype=np.int8)
         fate = np.zeros(alpha.size, dtype=np.int8)
         with threads.LOCK:
-            trace_rays(
-                np.ascontiguousarray(alpha),
-                np.ascontiguousarray(beta),
-                math.cos(inclination),
-                math.sin(inclination),
-                radius,
-                turned,
-                later,
-                pushed,
-                status,
-                fate,
-            )
+            if azimuth or delay or momentum or cosine == 0.0:
+                trace_rays(x, y, cosine, sine, radius, turned, later, pushed, status, fate)
+            else:
+                crossing_radii(x, y, cosine, sine, radius, status, fate)
         return Hit(
             radius=radius,
             azimuth=turned if azimuth else None,

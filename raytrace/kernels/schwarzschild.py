@@ -21,14 +21,15 @@ LADDER_END = 3e-9
 MOST_RUNGS = 12
 # α² + β² = 27 has no solution among floating-point numbers; a difference that underflows is moved off zero by this.
 LEAST_EXCESS = 1e-60
-# |cos i| below this is an exactly edge-on view: half a unit in the last place of π/2.
-EDGE_ON = 1e-16
-# Gauss–Legendre rule for the smooth part of the delay, in panels of this many nodes.
-PANELS = 3
+# Rays that a thread takes at a time.
+TILE = 1024
+# Gauss–Legendre rule for the smooth part of the delay: 16 nodes reach 1e-13 on panels no longer than this, because the
+# nearest branch point, u = u1, lies at least 0.2 beyond the end (½ ln 1.5 on the critical curve, where it is nearest).
+LONGEST_PANEL = 0.75
 POINTS, WEIGHTS = np.polynomial.legendre.leggauss(16)
 
 
-@kernel(strict=True)
+@kernel()
 def _product_error(a, b, product):
     """The rounding error of a product (Dekker 1971)."""
     t = SPLITTER * a
@@ -40,7 +41,7 @@ def _product_error(a, b, product):
     return ((a1 * b1 - product) + a1 * b2 + a2 * b1) + a2 * b2
 
 
-@kernel(strict=True)
+@kernel()
 def square_excess(alpha, beta):
     """b² and b² − 27, the latter to full relative precision however close to the critical curve."""
     a2, b2 = alpha * alpha, beta * beta
@@ -146,37 +147,53 @@ def _position(psi, b, escapes, roots, rungs, mean, upper, lower):
 
 
 @kernel()
-def lag(u, b, escapes, roots):
-    """J(u) = ∫₀ᵘ b²/[√W (1 + √W)] du with W = 1 − b²u²(1 − 2u), up to u on the way in: what bending adds to the delay.
+def panels(length):
+    """How many panels the quadrature spends on an interval."""
+    return int(length / LONGEST_PANEL) + 1
 
-    The substitution u = u2 − (u3 − u2) sinh²θ, or u = p + q sinh θ, takes 1/√W away, so the integrand is smooth in θ.
-    """
-    u1 = roots[0]
+
+@kernel()
+def depth(u, escapes, roots):
+    """The variable θ of `lag` at u: u = u2 − (u3 − u2) sinh²θ, or u = p + q sinh θ."""
     if escapes:
-        gap = roots[2] - roots[1]
-        first = math.asinh(math.sqrt(max(roots[1] - u, 0.0) / gap))
-        last = math.asinh(math.sqrt(roots[1] / gap))
-    else:
-        p = roots[1]
-        q = _imaginary(roots)
-        first = math.asinh(-p / q)
-        last = math.asinh((u - p) / q)
+        return math.asinh(math.sqrt(max(roots[1] - u, 0.0) / (roots[2] - roots[1])))
+    return math.asinh((u - roots[1]) / _imaginary(roots))
+
+
+@kernel()
+def _depth_by_slope(u, w, b, roots):
+    """The same for a ray that escapes, from w = b u': near the closest approach u2 − u itself has lost its digits."""
+    gap = roots[2] - roots[1]
+    product = w * w / (2.0 * b * b * (u - roots[0]))  # (u2 − u)(u3 − u)
+    below = 2.0 * product / (gap + math.sqrt(gap * gap + 4.0 * product))
+    return math.asinh(math.sqrt(below / gap))
+
+
+@kernel()
+def lag(theta, b, escapes, roots):
+    """J = ∫ b²/[√W (1 + √W)] du with W = 1 − b²u²(1 − 2u), from u = 0 to θ on the way in: what bending adds to the delay.
+
+    The variable θ of `depth` takes 1/√W away, so the integrand is smooth.
+    """
+    far = depth(0.0, escapes, roots)
+    first, last = (theta, far) if escapes else (far, theta)
+    u1, middle = roots[0], roots[1]
+    scale = roots[2] - roots[1] if escapes else _imaginary(roots)
+    count = panels(last - first)
+    step = (last - first) / count
     total = 0.0
-    step = (last - first) / PANELS
-    for panel in range(PANELS):
+    for panel in range(count):
         for i in range(POINTS.shape[0]):
-            theta = first + step * (panel + 0.5 + 0.5 * POINTS[i])
+            s = math.sinh(first + step * (panel + 0.5 + 0.5 * POINTS[i]))
             if escapes:
-                s = math.sinh(theta)
-                here = roots[1] - gap * s * s
-                w2 = 2.0 * b * b * (here - u1) * gap * s * s * gap * (1.0 + s * s)
+                above = middle - scale * s * s - u1
+                w = scale * s * b * math.sqrt(2.0 * above * (1.0 + s * s))
                 rate = 2.0
             else:
-                s = q * math.sinh(theta)
-                here = p + s
-                w2 = 2.0 * b * b * (here - u1) * (s * s + q * q)
+                above = middle + scale * s - u1
+                w = scale * b * math.sqrt(2.0 * above * (1.0 + s * s))
                 rate = 1.0
-            total += WEIGHTS[i] * rate * b / (math.sqrt(2.0 * (here - u1)) * (1.0 + math.sqrt(w2)))
+            total += WEIGHTS[i] * rate * b / (math.sqrt(2.0 * above) * (1.0 + w))
     return 0.5 * step * total
 
 
@@ -219,17 +236,50 @@ def _first_angle(alpha, beta, cosine, sine, view):
 @kernel()
 def _crossing_delay(u, w, b, escapes, roots):
     """Delay of a crossing at u: −r* + J on the way in; by symmetry about the turning point on the way out."""
-    inward = -tortoise(u) + lag(u, b, escapes, roots)
+    theta = _depth_by_slope(u, w, b, roots) if escapes else depth(u, escapes, roots)
+    inward = -tortoise(u) + lag(theta, b, escapes, roots)
     if w >= 0.0:
         return inward
-    turning = roots[1]
-    return 2.0 * (-tortoise(turning) + lag(turning, b, escapes, roots)) - inward
+    return 2.0 * (-tortoise(roots[1]) + lag(0.0, b, escapes, roots)) - inward
 
 
 @kernel()
 def _wrapped(angle):
     """An angle brought into (−π, π]."""
     return angle - 2.0 * math.pi if angle > math.pi else angle
+
+
+@kernel()
+def trace_ray(i, alpha, beta, cosine, sine, radius, azimuth, delay, momentum, status, fate, work):
+    """Trace ray i to its crossings; `work` holds two ladders, five numbers of the cubic and three of the view."""
+    upper, lower = work[:MOST_RUNGS], work[MOST_RUNGS : 2 * MOST_RUNGS]
+    roots, view = work[2 * MOST_RUNGS : 2 * MOST_RUNGS + 5], work[2 * MOST_RUNGS + 5 :]
+    square, excess = square_excess(alpha[i], beta[i])
+    fate[i] = ESCAPED if excess > 0.0 else CAPTURED
+    if square == 0.0 or not _first_angle(alpha[i], beta[i], cosine, sine, view):
+        status[:, i] = IN_PLANE if square > 0.0 or cosine == 0.0 else CAPTURED
+        return
+    b = math.sqrt(square)
+    escapes = shape(square, excess, roots)
+    rungs, mean = _ladder(roots[4], upper, lower)
+    for order in range(radius.shape[0]):
+        psi = view[0] + order * math.pi
+        u, y = _position(psi, b, escapes, roots, rungs, mean, upper, lower)
+        if not u > 0.0:
+            status[order:, i] = fate[i]
+            return
+        status[order, i] = CROSSED
+        radius[order, i] = 1.0 / u
+        odd = order % 2 == 1
+        if azimuth.shape[0] > 0:
+            azimuth[order, i] = _wrapped(view[1] + (math.pi if odd else 0.0))
+        w = 1.0 - (1.0 - 2.0 * u) / (2.0 * y)
+        if delay.shape[0] > 0:
+            delay[order, i] = _crossing_delay(u, w, b, escapes, roots)
+        if momentum.shape[1] > 0:
+            momentum[0, order, i] = w / (1.0 - 2.0 * u)
+            momentum[1, order, i] = -view[2] if odd else view[2]
+            momentum[2, order, i] = -alpha[i] * sine
 
 
 @kernel(parallel=True)
@@ -240,7 +290,7 @@ def trace_rays(alpha, beta, cosine, sine, radius, azimuth, delay, momentum, stat
     ----------
     alpha, beta : float64 arrays (n,)
     cosine, sine : float
-        Of the inclination.
+        Of the inclination; the cosine is exactly 0 edge-on.
     radius, azimuth, delay : float64 arrays (orders, n)
         Filled; azimuth and delay may have no rows where they are not asked for.
     momentum : float64 array (3, orders, n)
@@ -248,38 +298,8 @@ def trace_rays(alpha, beta, cosine, sine, radius, azimuth, delay, momentum, stat
     status : int8 array (orders, n)
     fate : int8 array (n,)
     """
-    orders, count = radius.shape
-    if abs(cosine) < EDGE_ON:
-        cosine = 0.0
-    tiles = 256
-    size = (count + tiles - 1) // tiles
-    for tile in numba.prange(tiles):
-        upper, lower = np.empty(MOST_RUNGS), np.empty(MOST_RUNGS)
-        roots, view = np.empty(5), np.empty(3)
-        for i in range(tile * size, min((tile + 1) * size, count)):
-            square, excess = square_excess(alpha[i], beta[i])
-            fate[i] = ESCAPED if excess > 0.0 else CAPTURED
-            if square == 0.0 or not _first_angle(alpha[i], beta[i], cosine, sine, view):
-                status[:, i] = IN_PLANE if square > 0.0 or cosine == 0.0 else CAPTURED
-                continue
-            b = math.sqrt(square)
-            escapes = shape(square, excess, roots)
-            rungs, mean = _ladder(roots[4], upper, lower)
-            for order in range(orders):
-                psi = view[0] + order * math.pi
-                u, y = _position(psi, b, escapes, roots, rungs, mean, upper, lower)
-                if not u > 0.0:
-                    status[order:, i] = fate[i]
-                    break
-                status[order, i] = CROSSED
-                radius[order, i] = 1.0 / u
-                odd = order % 2 == 1
-                if azimuth.shape[0] > 0:
-                    azimuth[order, i] = _wrapped(view[1] + (math.pi if odd else 0.0))
-                w = 1.0 - (1.0 - 2.0 * u) / (2.0 * y)
-                if delay.shape[0] > 0:
-                    delay[order, i] = _crossing_delay(u, w, b, escapes, roots)
-                if momentum.shape[1] > 0:
-                    momentum[0, order, i] = w / (1.0 - 2.0 * u)
-                    momentum[1, order, i] = -view[2] if odd else view[2]
-                    momentum[2, order, i] = -alpha[i] * sine
+    count = radius.shape[1]
+    for tile in numba.prange((count + TILE - 1) // TILE):
+        work = np.empty(2 * MOST_RUNGS + 8)
+        for i in range(tile * TILE, min((tile + 1) * TILE, count)):
+            trace_ray(i, alpha, beta, cosine, sine, radius, azimuth, delay, momentum, status, fate, work)

@@ -9,7 +9,16 @@ import math
 import numpy as np
 
 from raytrace.kernels.compiling import kernel
-from raytrace.kernels.schwarzschild import PANELS, POINTS, WEIGHTS, lag, shape, square_excess, tortoise
+from raytrace.kernels.schwarzschild import (
+    POINTS,
+    WEIGHTS,
+    depth,
+    lag,
+    panels,
+    shape,
+    square_excess,
+    tortoise,
+)
 
 # Below this 1/r of closest approach bending is weak and its own integral is used.
 WEAK = 0.15
@@ -19,9 +28,10 @@ WEAK = 0.15
 def _swept(u1, u2, gap):
     """∫ du/√P from infinity to the turning point, by u = u2 − gap sinh²θ."""
     last = math.asinh(math.sqrt(u2 / gap))
-    step = last / PANELS
+    count = panels(last)
+    step = last / count
     total = 0.0
-    for panel in range(PANELS):
+    for panel in range(count):
         for i in range(POINTS.shape[0]):
             s = math.sinh(step * (panel + 0.5 + 0.5 * POINTS[i]))
             total += WEIGHTS[i] * 2.0 / math.sqrt(2.0 * (u2 - gap * s * s - u1))
@@ -31,9 +41,10 @@ def _swept(u1, u2, gap):
 @kernel()
 def _weak(u2):
     """2 ∫ [1/√(1 − 2 u2 h) − 1] dx over a quarter turn, u = u2 sin x, h = (1 + s + s²)/(1 + s)."""
-    step = 0.5 * math.pi / PANELS
+    count = panels(0.5 * math.pi)
+    step = 0.5 * math.pi / count
     total = 0.0
-    for panel in range(PANELS):
+    for panel in range(count):
         for i in range(POINTS.shape[0]):
             s = math.sin(step * (panel + 0.5 + 0.5 * POINTS[i]))
             h = 2.0 * u2 * (1.0 + s + s * s) / (1.0 + s)
@@ -66,15 +77,22 @@ def _inner_lag(near, far, b, roots):
     gap = roots[2] - roots[1]
     first = math.asinh(math.sqrt(max(1.0 / far - roots[2], 0.0) / gap))
     last = math.asinh(math.sqrt((1.0 / near - roots[2]) / gap))
-    step = (last - first) / PANELS
+    count = panels(last - first)
+    step = (last - first) / count
     total = 0.0
-    for panel in range(PANELS):
+    for panel in range(count):
         for i in range(POINTS.shape[0]):
             s = math.sinh(first + step * (panel + 0.5 + 0.5 * POINTS[i]))
             u = roots[2] + gap * s * s
             w2 = 2.0 * b * b * (u - roots[0]) * gap * s * s * gap * (1.0 + s * s)
             total += WEIGHTS[i] * 2.0 * b / (math.sqrt(2.0 * (u - roots[0])) * (1.0 + math.sqrt(w2)))
     return 0.5 * step * total
+
+
+@kernel()
+def _lag_at(r, b, escapes, roots):
+    """The lag from infinity to radius r."""
+    return lag(depth(1.0 / r, escapes, roots), b, escapes, roots)
 
 
 @kernel()
@@ -89,14 +107,14 @@ def travel_time(near, far, b, turns):
     if not escapes:
         if turns == 1:
             return math.nan
-        return climb + lag(1.0 / near, b, escapes, roots) - lag(1.0 / far, b, escapes, roots)
+        return climb + _lag_at(near, b, escapes, roots) - _lag_at(far, b, escapes, roots)
     turning = roots[1]
     if 1.0 / far >= roots[2]:
         return climb + _inner_lag(near, far, b, roots) if turns == 0 else math.nan
     if 1.0 / near > turning * (1.0 + 4e-16):
         return math.nan
-    first, last = lag(1.0 / near, b, escapes, roots), lag(1.0 / far, b, escapes, roots)
+    first, last = _lag_at(near, b, escapes, roots), _lag_at(far, b, escapes, roots)
     if turns == 0:
         return climb + first - last
-    closest = lag(turning, b, escapes, roots)
+    closest = lag(0.0, b, escapes, roots)
     return tortoise(1.0 / far) + tortoise(1.0 / near) - 2.0 * tortoise(turning) + 2.0 * closest - first - last

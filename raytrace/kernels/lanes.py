@@ -159,7 +159,7 @@ def _escaping(alpha, beta, cosine, sine, turns, radius):
         c, dn, inside = _elliptic(g * psi, l0)
         s2 = 1.0 / (c * c + 1.0)
         low = g2 + 0.5 * u1 * s2
-        r = 2.0 * low * low * square / (s2 * (2.0 * g2 * g * c * dn * b + 0.5 * math.sqrt(s2)))
+        r = 2.0 * low * low * square / (s2 * (2.0 * g2 * g * c * dn * b + 0.5 * s2))
         radius[i] = r if inside else np.nan
 
 
@@ -181,13 +181,14 @@ def _captured(alpha, beta, cosine, sine, turns, radius):
 
 
 @kernel()
-def _kind(square):
-    """ESCAPED or CAPTURED for a ray that the straight-line code can take, CROSSED for one that it cannot."""
-    if square > CRITICAL_SQUARE * (1.0 + GRAZING):
-        return ESCAPED
-    if ALMOST_RADIAL < square < CRITICAL_SQUARE * (1.0 - GRAZING):
-        return CAPTURED
-    return CROSSED
+def _select(alpha, beta, above, below, x, y, place):
+    """Copy the rays with b² between two bounds, and their places, to the front of x, y and place; returns how many."""
+    n = 0
+    for i in range(alpha.shape[0]):
+        square = alpha[i] * alpha[i] + beta[i] * beta[i]
+        x[n], y[n], place[n] = alpha[i], beta[i], i
+        n += above < square < below
+    return n
 
 
 @kernel()
@@ -195,12 +196,52 @@ def _keep_crossed(x, y, place, found, radius, status):
     """Write the crossings found and move their rays to the front, for the next order; returns how many."""
     kept = 0
     for j in range(found.shape[0]):
-        if found[j] > HORIZON:
-            i = place[j]
-            radius[i], status[i] = found[j], CROSSED
-            x[kept], y[kept], place[kept] = x[j], y[j], i
-            kept += 1
+        i = place[j]
+        crossed = found[j] > HORIZON
+        radius[i] = found[j] if crossed else radius[i]
+        status[i] = CROSSED if crossed else status[i]
+        x[kept], y[kept], place[kept] = x[j], y[j], i
+        kept += crossed
     return kept
+
+
+@kernel()
+def _trace_tile(alpha, beta, cosine, sine, radius, status, fate):
+    """`crossing_radii` for the rays that one thread takes."""
+    count = alpha.shape[0]
+    x, y, found = np.empty(count + 1), np.empty(count + 1), np.empty(count + 1)
+    place = np.empty(count + 1, np.int64)
+    fate[:] = ESCAPED
+    status[:] = ESCAPED
+    done = _select(alpha, beta, CRITICAL_SQUARE * (1.0 + GRAZING), np.inf, x, y, place)
+    n = done
+    for order in range(radius.shape[0]):
+        _escaping(x[:n], y[:n], cosine, sine, order * math.pi, found[:n])
+        n = _keep_crossed(x, y, place, found[:n], radius[order], status[order])
+    if done == count:
+        return
+    n = _select(alpha, beta, ALMOST_RADIAL, CRITICAL_SQUARE * (1.0 - GRAZING), x, y, place)
+    done += n
+    for i in place[:n]:
+        fate[i], status[:, i] = CAPTURED, CAPTURED
+    for order in range(radius.shape[0]):
+        _captured(x[:n], y[:n], cosine, sine, order * math.pi, found[:n])
+        n = _keep_crossed(x, y, place, found[:n], radius[order], status[order])
+    if done == count:
+        return
+    _trace_rest(alpha, beta, cosine, sine, radius, status, fate)
+
+
+@kernel()
+def _trace_rest(alpha, beta, cosine, sine, radius, status, fate):
+    """Trace one by one the rays that the straight-line code cannot take."""
+    nothing, no_momentum, work = np.empty((0, 1)), np.empty((3, 0, 1)), np.empty(2 * MOST_RUNGS + 8)
+    for i in range(alpha.shape[0]):
+        square = alpha[i] * alpha[i] + beta[i] * beta[i]
+        if square > CRITICAL_SQUARE * (1.0 + GRAZING):
+            continue
+        if not ALMOST_RADIAL < square < CRITICAL_SQUARE * (1.0 - GRAZING):
+            trace_ray(i, alpha, beta, cosine, sine, radius, nothing, nothing, no_momentum, status, fate, work)
 
 
 @kernel(parallel=True)
@@ -209,26 +250,12 @@ def crossing_radii(alpha, beta, cosine, sine, radius, status, fate):
     count = alpha.shape[0]
     for tile in numba.prange((count + TILE - 1) // TILE):
         start, stop = tile * TILE, min((tile + 1) * TILE, count)
-        x, y, found, place = np.empty(TILE), np.empty(TILE), np.empty(TILE), np.empty(TILE, np.int64)
-        nothing, no_momentum, work = np.empty((0, 1)), np.empty((3, 0, 1)), np.empty(2 * MOST_RUNGS + 8)
-        for kind in (ESCAPED, CAPTURED, CROSSED):
-            n = 0
-            for i in range(start, stop):
-                if _kind(alpha[i] * alpha[i] + beta[i] * beta[i]) == kind:
-                    x[n], y[n], place[n] = alpha[i], beta[i], i
-                    n += 1
-            if kind == CROSSED:
-                for i in place[:n]:
-                    trace_ray(
-                        i, alpha, beta, cosine, sine, radius, nothing, nothing, no_momentum, status, fate, work
-                    )
-                continue
-            for i in place[:n]:
-                fate[i], status[:, i] = kind, kind
-            for order in range(radius.shape[0]):
-                turns = order * math.pi
-                if kind == ESCAPED:
-                    _escaping(x[:n], y[:n], cosine, sine, turns, found[:n])
-                else:
-                    _captured(x[:n], y[:n], cosine, sine, turns, found[:n])
-                n = _keep_crossed(x, y, place, found[:n], radius[order], status[order])
+        _trace_tile(
+            alpha[start:stop],
+            beta[start:stop],
+            cosine,
+            sine,
+            radius[:, start:stop],
+            status[:, start:stop],
+            fate[start:stop],
+        )

@@ -8,10 +8,10 @@ from __future__ import annotations
 
 import math
 from dataclasses import dataclass
-from typing import ClassVar
+from typing import ClassVar, NamedTuple
 
 import numpy as np
-from numpy.typing import ArrayLike
+from numpy.typing import ArrayLike, NDArray
 
 from raytrace.contract import Array, CircularOrbit, Hit, Metric
 
@@ -77,32 +77,72 @@ class Schwarzschild:
         momentum: bool,
     ) -> Hit:
         """Trace checked one-dimensional float64 arrays; see `raytrace.trace`."""
-        from raytrace.kernels import threads
-        from raytrace.kernels.lanes import crossing_radii
-        from raytrace.kernels.schwarzschild import trace_rays
-
-        shape = (orders, alpha.size)
-        empty = (0, alpha.size)
         x, y = np.ascontiguousarray(alpha), np.ascontiguousarray(beta)
         cosine, sine = math.cos(inclination), math.sin(inclination)
-        cosine = 0.0 if abs(cosine) < EDGE_ON else cosine
-        radius = np.full(shape, np.nan)
-        turned = np.full(shape if azimuth else empty, np.nan)
-        later = np.full(shape if delay else empty, np.nan)
-        pushed = np.full((3, *(shape if momentum else empty)), np.nan)
-        status = np.zeros(shape, dtype=np.int8)
-        fate = np.zeros(alpha.size, dtype=np.int8)
-        with threads.LOCK:
-            if azimuth or delay or momentum or cosine == 0.0:
-                trace_rays(x, y, cosine, sine, radius, turned, later, pushed, status, fate)
-            else:
-                crossing_radii(x, y, cosine, sine, radius, status, fate)
+        if abs(cosine) < EDGE_ON:
+            cosine = 0.0
+        if azimuth or delay or momentum or cosine == 0.0:
+            found = _crossings(x, y, cosine, sine, orders, azimuth, delay, momentum)
+        else:
+            found = _radii(x, y, cosine, sine, orders)
         return Hit(
-            radius=radius,
-            azimuth=turned if azimuth else None,
-            delay=later if delay else None,
-            momentum=pushed if momentum else None,
-            status=status,
-            fate=fate,
+            radius=found.radius,
+            azimuth=found.azimuth if azimuth else None,
+            delay=found.delay if delay else None,
+            momentum=found.momentum if momentum else None,
+            status=found.status,
+            fate=found.fate,
             inclination=inclination,
         )
+
+
+class _Found(NamedTuple):
+    """What a kernel fills; azimuth, delay and momentum have no rows where they are not asked for."""
+
+    radius: Array
+    azimuth: Array
+    delay: Array
+    momentum: Array
+    status: NDArray[np.int8]
+    fate: NDArray[np.int8]
+
+
+def _blank(orders: int, rays: int, azimuth: bool, delay: bool, momentum: bool) -> _Found:
+    """Room for a kernel's results: NaN until a crossing is found."""
+    shape, nothing = (orders, rays), (0, rays)
+    return _Found(
+        np.full(shape, np.nan),
+        np.full(shape if azimuth else nothing, np.nan),
+        np.full(shape if delay else nothing, np.nan),
+        np.full((3, *(shape if momentum else nothing)), np.nan),
+        np.zeros(shape, dtype=np.int8),
+        np.zeros(rays, dtype=np.int8),
+    )
+
+
+def _crossings(
+    x: Array, y: Array, cosine: float, sine: float, orders: int, azimuth: bool, delay: bool, momentum: bool
+) -> _Found:
+    """Everything asked for, ray by ray."""
+    from raytrace.kernels import threads
+    from raytrace.kernels.schwarzschild import trace_rays
+
+    found = _blank(orders, x.size, azimuth, delay, momentum)
+    with threads.LOCK:
+        trace_rays(x, y, cosine, sine, *found)
+    return found
+
+
+def _radii(x: Array, y: Array, cosine: float, sine: float, orders: int) -> _Found:
+    """Radii alone, many rays at a time; the few rays that need care one by one."""
+    from raytrace.kernels import threads
+    from raytrace.kernels.lanes import LEFT, crossing_radii
+
+    found = _blank(orders, x.size, False, False, False)
+    with threads.LOCK:
+        crossing_radii(x, y, cosine, sine, found.radius, found.status, found.fate)
+    left = np.flatnonzero(found.fate == LEFT)
+    if left.size:
+        rest = _crossings(x[left], y[left], cosine, sine, orders, False, False, False)
+        found.radius[:, left], found.status[:, left], found.fate[left] = rest.radius, rest.status, rest.fate
+    return found

@@ -2,7 +2,7 @@
 
 Rays that escape and rays that are captured each have their straight-line code, with polynomial sine, cosine and arc tangent
 (coefficients of Moshier's Cephes library, error 1e-16 on their ranges); those few that graze the critical curve or run almost
-radially go through the per-ray code. G = c = M = 1.
+radially are left to the per-ray code. G = c = M = 1.
 """
 
 import math
@@ -11,15 +11,10 @@ import numba
 import numpy as np
 
 from raytrace.kernels.compiling import kernel
-from raytrace.kernels.schwarzschild import (
-    CAPTURED,
-    CRITICAL_SQUARE,
-    CROSSED,
-    ESCAPED,
-    MOST_RUNGS,
-    trace_ray,
-)
+from raytrace.kernels.schwarzschild import CAPTURED, CRITICAL_SQUARE, CROSSED, ESCAPED
 
+# The fate of a ray that the straight-line code cannot take.
+LEFT = -1
 # Rays whose b² differs from 27 by less than this share of it need more rungs than the six of the straight-line code, and b² − 27
 # with the digits that rounding of the squares takes.
 GRAZING = 4e-4
@@ -192,6 +187,17 @@ def _select(alpha, beta, above, below, x, y, place):
 
 
 @kernel()
+def _mark(place, kind, status, fate):
+    """Give rays the fate and, until a crossing is found, the status of their kind."""
+    for i in place:
+        fate[i] = kind
+    for order in range(status.shape[0]):
+        row = status[order]
+        for i in place:
+            row[i] = kind
+
+
+@kernel()
 def _keep_crossed(x, y, place, found, radius, status):
     """Write the crossings found and move their rays to the front, for the next order; returns how many."""
     kept = 0
@@ -209,44 +215,28 @@ def _keep_crossed(x, y, place, found, radius, status):
 def _trace_tile(alpha, beta, cosine, sine, radius, status, fate):
     """`crossing_radii` for the rays that one thread takes."""
     count = alpha.shape[0]
+    # One place more than rays: `_select` writes before it decides.
     x, y, found = np.empty(count + 1), np.empty(count + 1), np.empty(count + 1)
     place = np.empty(count + 1, np.int64)
-    fate[:] = ESCAPED
-    status[:] = ESCAPED
-    done = _select(alpha, beta, CRITICAL_SQUARE * (1.0 + GRAZING), np.inf, x, y, place)
-    n = done
+    fate[:] = LEFT
+    n = _select(alpha, beta, CRITICAL_SQUARE * (1.0 + GRAZING), np.inf, x, y, place)
+    _mark(place[:n], ESCAPED, status, fate)
     for order in range(radius.shape[0]):
         _escaping(x[:n], y[:n], cosine, sine, order * math.pi, found[:n])
         n = _keep_crossed(x, y, place, found[:n], radius[order], status[order])
-    if done == count:
-        return
     n = _select(alpha, beta, ALMOST_RADIAL, CRITICAL_SQUARE * (1.0 - GRAZING), x, y, place)
-    done += n
-    for i in place[:n]:
-        fate[i], status[:, i] = CAPTURED, CAPTURED
+    _mark(place[:n], CAPTURED, status, fate)
     for order in range(radius.shape[0]):
         _captured(x[:n], y[:n], cosine, sine, order * math.pi, found[:n])
         n = _keep_crossed(x, y, place, found[:n], radius[order], status[order])
-    if done == count:
-        return
-    _trace_rest(alpha, beta, cosine, sine, radius, status, fate)
-
-
-@kernel()
-def _trace_rest(alpha, beta, cosine, sine, radius, status, fate):
-    """Trace one by one the rays that the straight-line code cannot take."""
-    nothing, no_momentum, work = np.empty((0, 1)), np.empty((3, 0, 1)), np.empty(2 * MOST_RUNGS + 8)
-    for i in range(alpha.shape[0]):
-        square = alpha[i] * alpha[i] + beta[i] * beta[i]
-        if square > CRITICAL_SQUARE * (1.0 + GRAZING):
-            continue
-        if not ALMOST_RADIAL < square < CRITICAL_SQUARE * (1.0 - GRAZING):
-            trace_ray(i, alpha, beta, cosine, sine, radius, nothing, nothing, no_momentum, status, fate, work)
 
 
 @kernel(parallel=True)
 def crossing_radii(alpha, beta, cosine, sine, radius, status, fate):
-    """Fill status (orders, n), fate (n,) and, where rays cross, radius (orders, n), as `schwarzschild.trace_rays` does."""
+    """Fill status (orders, n), fate (n,) and, where rays cross, radius (orders, n), as `schwarzschild.trace_rays` does.
+
+    Rays that it cannot take get the fate LEFT and nothing else; the cosine of the inclination may not be 0.
+    """
     count = alpha.shape[0]
     for tile in numba.prange((count + TILE - 1) // TILE):
         start, stop = tile * TILE, min((tile + 1) * TILE, count)

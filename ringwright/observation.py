@@ -14,23 +14,17 @@ from typing import Annotated, Any, Literal
 from astropy import units as u
 from pydantic import Field
 
-from ringwright.scenes.models import Strict
-from ringwright.scenes.validation import Document, read_document, register, validated
-from ringwright.units import KINDS, parse_given
+from ringwright.scenes.errors import SceneError
+from ringwright.scenes.models import Name, Strict
+from ringwright.scenes.validation import examined, read_document
+from ringwright.units import KINDS, parse_given, plain_number, shown
 
 ESTIMATORS = ("peak-ring",)
-NO_RESOLUTION = (
-    "is missing and has no default, because the choice moves the mass by 10 to 20 %: give the FWHM that the image had "
+WHY_NO_RESOLUTION = (
+    "because the choice moves the mass by 10 to 20 %: give the FWHM that the image had "
     'when the diameter was read, such as "20 uas", an interval such as ["15 uas", "25 uas"], or "none" for a '
     "diameter that is already corrected for resolution or was fitted as a model"
 )
-
-
-class TwoErrors(Strict):
-    """Errors upward and downward."""
-
-    plus: Any
-    minus: Any
 
 
 class NumberTable(Strict):
@@ -43,10 +37,10 @@ class NumberTable(Strict):
 class DiameterTable(Strict):
     """The ring diameter and how it was read."""
 
-    value: Any
-    error: Any
-    resolution: Any = None
-    estimator: str
+    value: Annotated[Any, Field(examples=['"42 uas"'])]
+    error: Annotated[Any, Field(examples=['"3 uas"'])]
+    resolution: Annotated[Any, Field(description=WHY_NO_RESOLUTION)]
+    estimator: Annotated[str, Field(examples=[f'"{ESTIMATORS[0]}"'])]
 
 
 class PriorTable(Strict):
@@ -61,13 +55,10 @@ class PriorTable(Strict):
 class ObservationFile(Strict):
     """A whole observation file."""
 
-    name: Annotated[str, Field(pattern=r"^[A-Za-z0-9][A-Za-z0-9._-]*$")]
+    name: Name
     diameter: DiameterTable
     distance: NumberTable | None = None
     prior: PriorTable = Field(default_factory=PriorTable)
-
-
-register(ObservationFile)
 
 
 @dataclass(frozen=True)
@@ -121,57 +112,70 @@ def load_observation(path: str | Path) -> Observation:
         With every problem of the file: line, key, what was given and what is accepted.
     """
     document = read_document(path)
-    model = validated(ObservationFile, document)
-    reader = _Reader(document)
-    prior = model.prior
-    observation = Observation(
+    model, problems = examined(ObservationFile, document)
+    reader = _Reader()
+    diameter, distance = model.diameter, model.distance
+    prior = model.prior or PriorTable()
+    numbers = {
+        "diameter": reader.optional(("diameter",), diameter, "sky angle"),
+        "distance": reader.optional(("distance",), distance, "distance"),
+        "mass": reader.optional(("prior", "mass"), prior.mass, "mass"),
+        "theta_g": reader.optional(("prior", "theta_g"), prior.theta_g, "sky angle"),
+    }
+    scene_priors = {
+        key: reader.scene_number(("prior", "scene", key), table) for key, table in prior.scene.items()
+    }
+    resolution = () if diameter is None else reader.resolution(diameter.resolution)
+    reader.conflicts(diameter, prior, has_distance="distance" in document.data)
+    if problems or reader.found:
+        raise SceneError([*problems, *(document.problem(*one) for one in reader.found)])
+    return Observation(
         name=model.name,
         path=document.path,
         text=document.text,
-        diameter=reader.number(("diameter",), model.diameter, "sky angle"),
-        resolution=reader.resolution(model.diameter.resolution),
-        estimator=model.diameter.estimator,
-        distance=reader.optional(("distance",), model.distance, "distance"),
-        mass=reader.optional(("prior", "mass"), prior.mass, "mass"),
-        theta_g=reader.optional(("prior", "theta_g"), prior.theta_g, "sky angle"),
+        resolution=resolution,
+        estimator=diameter.estimator,
         theta_g_shape=prior.theta_g_shape,
-        scene_priors={
-            key: reader.scene_number(("prior", "scene", key), table) for key, table in prior.scene.items()
-        },
+        scene_priors=scene_priors,
+        **numbers,  # type: ignore[arg-type]
     )
-    reader.conflicts(model)
-    if reader.found:
-        raise document.error(*reader.found)
-    return observation
 
 
 class _Reader:
     """Reads numbers with errors, and keeps what is wrong with them."""
 
-    def __init__(self, document: Document) -> None:
-        self.document = document
+    def __init__(self) -> None:
         self.found: list[tuple[tuple[str | int, ...], str]] = []
 
     def number(self, place: tuple[str, ...], table: Any, kind: str, *, positive: bool = True) -> Measurement:
         value = self.part((*place, "value"), table.value, kind)
-        errors = table.error if isinstance(table.error, dict) else {"plus": table.error, "minus": table.error}
-        if set(errors) != {"plus", "minus"}:
-            self.found.append(((*place, "error"), "write one error, or { plus = …, minus = … }"))
-            errors = {}
-        plus, minus = (
-            self.part(self.within(place, table, side), errors[side], kind) if side in errors else math.nan
-            for side in ("plus", "minus")
-        )
-        for side, error in (("plus", plus), ("minus", minus)):
-            if error <= 0.0:
-                text = f"an error of {errors[side]!r} is not positive; a measurement without an error cannot be compared"
-                self.found.append((self.within(place, table, side), text))
+        plus, minus = self.errors((*place, "error"), table.error, kind)
         if positive and value <= 0.0:
-            self.found.append(((*place, "value"), f"{table.value!r} is not positive"))
-        unit = KINDS[kind][0] if kind in KINDS else kind
+            self.found.append(((*place, "value"), f"{shown(table.value)} is not positive"))
+        unit = KINDS[kind][0] if kind else ""
         return Measurement(*(number * u.Unit("" if unit == "M" else unit) for number in (value, plus, minus)))
 
-    def optional(self, place: tuple[str, ...], table: NumberTable | None, kind: str) -> Measurement | None:
+    def errors(self, place: tuple[str, ...], given: Any, kind: str) -> tuple[float, float]:
+        """Errors upward and downward."""
+        if not isinstance(given, dict):
+            both = self.error(place, given, kind)
+            return both, both
+        if set(given) != {"plus", "minus"}:
+            self.found.append((place, "write one error, or { plus = …, minus = … }"))
+            return math.nan, math.nan
+        plus, minus = (self.error((*place, side), given[side], kind) for side in ("plus", "minus"))
+        return plus, minus
+
+    def error(self, place: tuple[str, ...], given: Any, kind: str) -> float:
+        error = self.part(place, given, kind)
+        if error <= 0.0:
+            text = f"an error of {shown(given)} is not positive; a measurement without an error cannot be compared"
+            self.found.append((place, text))
+        return error
+
+    def optional(
+        self, place: tuple[str, ...], table: NumberTable | DiameterTable | None, kind: str
+    ) -> Measurement | None:
         return None if table is None else self.number(place, table, kind)
 
     def scene_number(self, place: tuple[str, ...], table: NumberTable) -> Measurement:
@@ -180,43 +184,35 @@ class _Reader:
         kind = "length" if text.strip().endswith("M") else "angle" if text else ""
         return self.number(place, table, kind, positive=False)
 
-    def within(self, place: tuple[str, ...], table: Any, side: str) -> tuple[str, ...]:
-        return (*place, "error", side) if isinstance(table.error, dict) else (*place, "error")
-
     def part(self, place: tuple[str, ...], value: Any, kind: str) -> float:
         try:
-            if kind:
-                return parse_given(value, kind)
-            if isinstance(value, bool) or not isinstance(value, int | float):
-                raise ValueError(f"{value!r} is not a number")
-            return float(value)
+            return parse_given(value, kind) if kind else plain_number(value)
         except ValueError as problem:
             self.found.append((place, str(problem)))
             return math.nan
 
     def resolution(self, given: Any) -> tuple[u.Quantity, ...]:
         place = ("diameter", "resolution")
-        if given is None:
-            self.found.append((place, NO_RESOLUTION))
-            return ()
         if given == "none":
             return ()
         values = given if isinstance(given, list) else [given]
         numbers = [self.part(place, value, "sky angle") for value in values]
+        if any(math.isnan(number) for number in numbers):
+            return ()
         if len(numbers) not in (1, 2):
             self.found.append((place, 'give one FWHM, an interval of two, or "none"'))
         elif any(number <= 0.0 for number in numbers):
-            self.found.append((place, f'{given!r} is not positive; write "none" for a corrected diameter'))
-        elif len(numbers) == 2 and not numbers[0] < numbers[1]:
             self.found.append(
-                (place, f"the interval {given!r} runs the wrong way round; write the smaller end first")
+                (place, f'{shown(given)} is not positive; write "none" for a corrected diameter')
             )
+        elif len(numbers) == 2 and not numbers[0] < numbers[1]:
+            text = f"the interval {shown(given)} runs the wrong way round; write the smaller end first"
+            self.found.append((place, text))
         return tuple(number * u.uas for number in numbers)
 
-    def conflicts(self, model: ObservationFile) -> None:
-        estimator, prior = model.diameter.estimator, model.prior
-        if estimator not in ESTIMATORS:
-            text = f"'{estimator}' is not an estimator of ours; accepted: {', '.join(ESTIMATORS)} (docs/measuring.md)"
+    def conflicts(self, diameter: DiameterTable | None, prior: PriorTable, *, has_distance: bool) -> None:
+        if diameter is not None and diameter.estimator not in ESTIMATORS:
+            text = f"'{diameter.estimator}' is not an estimator of ours; accepted: {', '.join(ESTIMATORS)} (docs/measuring.md)"
             self.found.append((("diameter", "estimator"), text))
         if prior.mass is not None and prior.theta_g is not None:
             text = (
@@ -224,6 +220,6 @@ class _Reader:
                 "numbers; keep mass or theta_g"
             )
             self.found.append((("prior", "theta_g"), text))
-        elif prior.mass is not None and model.distance is None:
+        elif prior.mass is not None and not has_distance:
             text = "a prior on the mass needs a distance to become an angle on the sky; add [distance]"
             self.found.append((("prior", "mass"), text))

@@ -1,7 +1,7 @@
 """Scan files: a base scene, what varies, and how it is drawn. The way a parameter varies is its prior.
 
-A range is uniform, a log range uniform in the logarithm, a cosine range (for inclinations) uniform in the cosine; a list gives
-equal weights. Numbers are kept in M, rad or without a unit.
+Each parameter must stand in the base scene, and the ends of its prior must make valid scenes of it, so that what is wrong is told
+before anything runs. Lengths are in M, angles in rad.
 """
 
 from __future__ import annotations
@@ -11,22 +11,41 @@ from dataclasses import dataclass
 from pathlib import Path
 from typing import Annotated, Any, Literal
 
-import numpy as np
-from numpy.typing import NDArray
 from pydantic import Field
 
-from ringwright.scenes.errors import Problem, SceneError
+from ringwright.scenes.errors import Problem, SceneError, did_you_mean
 from ringwright.scenes.loading import load_scene
-from ringwright.scenes.models import FEWEST_PIXELS, MOST_PIXELS, Length, Strict
-from ringwright.scenes.scene import Scene
-from ringwright.scenes.validation import Document, read_document, register, validated
-from ringwright.units import parse_given
+from ringwright.scenes.models import (
+    FARTHEST,
+    FEWEST_PIXELS,
+    MOST_PIXELS,
+    NARROWEST_FIELD,
+    Given,
+    Name,
+    SceneFile,
+    Strict,
+)
+from ringwright.scenes.scene import Scene, key_path
+from ringwright.scenes.validation import Document, accepted_keys, dotted, examined, read_document
+from ringwright.units import shown
+from ringwright.varying import KINDS, Kind, Vary, number_and_unit
 
-Array = NDArray[np.float64]
-Kind = Literal["range", "log_range", "cosine_range", "list"]
-KINDS: tuple[Kind, ...] = ("range", "log_range", "cosine_range", "list")
 Ends = Annotated[list[Any], Field(min_length=2, max_length=2)]
+FieldSide = Annotated[float, Given("length", NARROWEST_FIELD, FARTHEST)]
+HALF_TURN = math.pi * (1.0 + 1e-15)  # "180 deg" may come out a rounding error beyond π
 MOST_SCENES = 10_000_000
+# Readings are in units of M on the scan's own image, so these change nothing in a scan of scale-free scenes.
+WITHOUT_EFFECT = (
+    "name",
+    "hole.mass",
+    "hole.distance",
+    "hole.theta_g",
+    "view.position_angle",
+    "view.frequency",
+    "view.field",
+    "view.pixels",
+    "source",
+)
 
 
 class SamplingTable(Strict):
@@ -40,14 +59,14 @@ class SamplingTable(Strict):
 class ImageTable(Strict):
     """Field and pixels of the scan's images."""
 
-    field: Length = "56 M"  # type: ignore[assignment]
+    field: FieldSide = "56 M"  # type: ignore[assignment]
     pixels: Annotated[int, Field(ge=FEWEST_PIXELS, le=MOST_PIXELS)] = 256
 
 
 class VaryTable(Strict):
     """One parameter and its prior."""
 
-    key: str
+    key: Annotated[str, Field(examples=['"view.inclination"'])]
     range_: Ends | None = Field(None, alias="range")
     log_range: Ends | None = None
     cosine_range: Ends | None = None
@@ -64,75 +83,12 @@ class VaryTable(Strict):
 class ScanFile(Strict):
     """A whole scan file."""
 
-    name: Annotated[str, Field(pattern=r"^[A-Za-z0-9][A-Za-z0-9._-]*$")]
+    name: Name
     family: str | None = None
-    scene: str
+    scene: Annotated[str, Field(examples=['"my-scene.toml"'])]
     sampling: SamplingTable = Field(default_factory=SamplingTable)
     image: ImageTable = Field(default_factory=ImageTable)
     vary: Annotated[list[VaryTable], Field(min_length=1)]
-
-
-register(ScanFile)
-
-
-@dataclass(frozen=True)
-class Vary:
-    """One parameter of a scan.
-
-    Attributes
-    ----------
-    key : str
-        Key path in the scene.
-    kind : str
-        "range", "log_range", "cosine_range" or "list".
-    unit : str
-        "M", "rad" or "": the unit of `low`, `high` and of `numbers`.
-    low, high : float
-        Ends of a range; NaN for a list.
-    values : tuple
-        Values of a list, as they stand in the file.
-    labels : tuple of str
-        Names of a list's values where they are no numbers.
-    points : int
-        Cells on a grid.
-    """
-
-    key: str
-    kind: Kind
-    unit: str
-    low: float
-    high: float
-    values: tuple[Any, ...]
-    labels: tuple[str, ...]
-    points: int
-
-    def draw(self, u: Array) -> list[Any]:
-        """Values, as they would stand in a scene file, at places 0 ≤ u < 1 of the prior's cumulative."""
-        if self.kind == "list":
-            return [self.values[min(int(x * len(self.values)), len(self.values) - 1)] for x in u]
-        return [self.written(float(x)) for x in self._quantiles(np.asarray(u, dtype=np.float64))]
-
-    def numbers(self, values: list[Any]) -> Array:
-        """Drawn values as plain numbers; the place in the list for values that are no numbers."""
-        if self.labels:
-            return np.array([float(self.values.index(value)) for value in values])
-        return np.array([_number(value)[0] for value in values])
-
-    def written(self, number: float) -> Any:
-        """A number of this parameter as it would stand in a scene file."""
-        return f"{number!r} {self.unit}" if self.unit else number
-
-    def ends(self) -> list[Any]:
-        """Values at the ends of the prior, or all of a list, to be tried on the base scene."""
-        return list(self.values) if self.kind == "list" else [self.written(self.low), self.written(self.high)]
-
-    def _quantiles(self, u: Array) -> Array:
-        if self.kind == "log_range":
-            return np.exp(math.log(self.low) + u * math.log(self.high / self.low))
-        if self.kind == "cosine_range":
-            first, last = math.cos(self.low), math.cos(self.high)
-            return np.arccos(np.clip(first + u * (last - first), -1.0, 1.0))
-        return self.low + u * (self.high - self.low)
 
 
 @dataclass(frozen=True)
@@ -177,14 +133,17 @@ def load_scan(path: str | Path) -> ScanPlan:
         With every problem of the file: line, key, what was given and what is accepted.
     """
     document = read_document(path)
-    model = validated(ScanFile, document)
-    base = _base(model, document)
-    found: list[Problem] = []
-    vary = tuple(_vary(table, index, model, document, found) for index, table in enumerate(model.vary))
-    if not found:
-        _try_ends(vary, base, document, found)
+    model, found = examined(ScanFile, document)
+    base = _base(model.scene, document, found)
+    drawn = [
+        None if table is None else _vary(table, index, model, document, found)
+        for index, table in enumerate(model.vary or ())
+    ]
+    vary = tuple(one for one in drawn if one is not None)
+    if base is not None:
+        _try_on(base, model, drawn, document, found)
     _check_sampling(model, document, found)
-    if found:
+    if found or base is None:
         raise SceneError(found)
     scenes = (
         math.prod(_cells(one) for one in vary)
@@ -207,37 +166,65 @@ def load_scan(path: str | Path) -> ScanPlan:
     )
 
 
-def _base(model: ScanFile, document: Document) -> Scene:
-    path = Path(document.path).parent / model.scene
-    if not path.is_file():
-        raise document.error(
-            (("scene",), f"there is no scene file {path} (paths start at the scan file's folder)")
-        )
-    return load_scene(path)
+def _base(name: str | None, document: Document, found: list[Problem]) -> Scene | None:
+    if name is None:
+        return None
+    path = Path(document.path).parent / name
+    try:
+        return load_scene(path)
+    except SceneError as problem:
+        unread = [one for one in problem.problems if one.text.startswith("cannot be read")]
+        for one in unread:
+            text = f"the base scene {one.file} {one.text} (its path starts at the scan file's folder)"
+            found.append(document.problem(("scene",), text))
+        found += [one for one in problem.problems if one not in unread]
+        return None
 
 
-def _vary(table: VaryTable, index: int, model: ScanFile, document: Document, found: list[Problem]) -> Vary:
+def _vary(
+    table: VaryTable, index: int, model: ScanFile, document: Document, found: list[Problem]
+) -> Vary | None:
     place = ("vary", index)
     given = [kind for kind in KINDS if table.prior(kind) is not None]
-    empty = Vary(table.key, "list", "", math.nan, math.nan, (), (), 1)
     if len(given) != 1:
-        text = f"'{table.key}' needs exactly one of {', '.join(KINDS)}; {' and '.join(given) or 'none'} stands here"
+        stands = f"{' and '.join(given)} stand here" if given else "none stands here"
+        text = f"'{table.key}' needs exactly one of {', '.join(KINDS)}; {stands}"
         found.append(document.problem(place, text))
-        return empty
+        return None
     kind = given[0]
+    found += _unread(table, kind, place, model, document)
     try:
         if kind == "list":
             return _listed(table)
         return _ranged(table, kind, model)
     except ValueError as problem:
         found.append(document.problem((*place, kind), str(problem)))
-        return empty
+        return None
+
+
+def _unread(
+    table: VaryTable, kind: Kind, place: tuple[str | int, ...], model: ScanFile, document: Document
+) -> list[Problem]:
+    """Keys that this way of varying does not read."""
+    found = []
+    if table.labels is not None and kind != "list":
+        found.append(
+            document.problem(
+                (*place, "labels"), f"nothing reads labels of a {kind}; they name a list's values"
+            )
+        )
+    grid = model.sampling is None or model.sampling.method == "grid"
+    if table.points is not None and (kind == "list" or not grid):
+        found.append(
+            document.problem((*place, "points"), "nothing reads points here; they divide a range on a grid")
+        )
+    return found
 
 
 def _listed(table: VaryTable) -> Vary:
     values = tuple(table.list_ or ())
     try:
-        units = {_number(value)[1] for value in values}
+        units = {number_and_unit(value)[1] for value in values}
     except ValueError:
         units = set()
     labels = tuple(table.labels or ()) if units else tuple(table.labels or map(_label, values))
@@ -250,7 +237,7 @@ def _listed(table: VaryTable) -> Vary:
 
 
 def _ranged(table: VaryTable, kind: Kind, model: ScanFile) -> Vary:
-    (low, unit), (high, other) = (_number(end) for end in table.prior(kind) or ())
+    (low, unit), (high, other) = (number_and_unit(end) for end in table.prior(kind) or ())
     if unit != other:
         raise ValueError("the two ends have different units; write both in one")
     if not low < high:
@@ -259,23 +246,11 @@ def _ranged(table: VaryTable, kind: Kind, model: ScanFile) -> Vary:
         )
     if kind == "log_range" and low <= 0.0:
         raise ValueError(f"a log range starts above 0, not at {low:g}")
-    if kind == "cosine_range" and unit != "rad":
-        raise ValueError('a cosine range is one of angles, such as ["0 deg", "20 deg"]')
-    if model.sampling.method == "grid" and table.points is None:
+    if kind == "cosine_range" and not (unit == "rad" and low >= 0.0 and high <= HALF_TURN):
+        raise ValueError('a cosine range is one of angles from 0 to 180 deg, such as ["0 deg", "20 deg"]')
+    if model.sampling is not None and model.sampling.method == "grid" and table.points is None:
         raise ValueError("on a grid a range needs points, the number of equal cells of prior weight")
     return Vary(table.key, kind, unit, low, high, (), (), table.points or 1)
-
-
-def _number(value: Any) -> tuple[float, str]:
-    """A plain number and its unit, "M", "rad" or none."""
-    if isinstance(value, bool) or not isinstance(value, int | float | str):
-        raise ValueError(f"{value!r} is neither a number nor a quantity")
-    if not isinstance(value, str):
-        if not math.isfinite(value):
-            raise ValueError(f"{value!r} is not finite")
-        return float(value), ""
-    kind = "length" if value.strip().endswith("M") else "angle"
-    return parse_given(value, kind), "M" if kind == "length" else "rad"
 
 
 def _label(value: Any) -> str:
@@ -285,31 +260,60 @@ def _label(value: Any) -> str:
     return str(value)
 
 
-def _try_ends(vary: tuple[Vary, ...], base: Scene, document: Document, found: list[Problem]) -> None:
-    """Every end of every prior must make a valid scene of the base."""
-    for index, one in enumerate(vary):
-        for value in one.ends():
-            try:
-                base.replace(one.key, value)
-            except SceneError as problem:
-                reasons = "; ".join(each.text for each in problem.problems)
-                found.append(document.problem(("vary", index, one.kind), f"{one.key} = {value!r}: {reasons}"))
-                break
+def _try_on(
+    base: Scene, model: ScanFile, drawn: list[Vary | None], document: Document, found: list[Problem]
+) -> None:
+    """Every key must stand in the base scene, and every end of every prior must make a valid scene of it."""
+    for index, (table, one) in enumerate(zip(model.vary or (), drawn, strict=True)):
+        if table is None:
+            continue
+        problem = _key_problem(table.key, base)
+        if problem:
+            found.append(document.problem(("vary", index, "key"), problem))
+        elif one is not None:
+            found += _end_problems(one, base, ("vary", index, one.kind), document)
+
+
+def _key_problem(key: str, base: Scene) -> str:
+    *table, last = key_path(key, base.data)
+    accepted = accepted_keys(SceneFile, base.data, tuple(table))
+    if isinstance(last, str) and last not in accepted:
+        hint = did_you_mean(last, accepted) if accepted else "emitters count from emitter.0"
+        return f"'{key}' is no key of the base scene; {hint}"
+    if base.scale_free and any(key == one or key.startswith(f"{one}.") for one in WITHOUT_EFFECT):
+        return f"'{key}' changes nothing in a scan: readings are in units of M, on the image that [image] describes"
+    return ""
+
+
+def _end_problems(one: Vary, base: Scene, place: tuple[str | int, ...], document: Document) -> list[Problem]:
+    given = document.data["vary"][place[1]][one.kind]
+    for value, written in zip(one.ends(), given, strict=True):
+        try:
+            base.replace(one.key, value)
+        except SceneError as problem:
+            reasons = "; ".join(_within(each, one.key, base) for each in problem.problems)
+            return [document.problem(place, f"{one.key} = {shown(written)}: {reasons}")]
+    return []
+
+
+def _within(problem: Problem, key: str, base: Scene) -> str:
+    """The words of a problem; with its key, where that is another than the one that varies."""
+    return (
+        problem.text if problem.key == dotted(key_path(key, base.data)) else f"{problem.key}: {problem.text}"
+    )
 
 
 def _check_sampling(model: ScanFile, document: Document, found: list[Problem]) -> None:
     sampling = model.sampling
-    if sampling.method == "sobol" and sampling.scenes is None:
+    if sampling is not None and sampling.method == "sobol" and sampling.scenes is None:
         found.append(document.problem(("sampling",), "a Sobol sequence needs scenes, best a power of two"))
-    if sampling.method == "grid" and sampling.scenes is not None:
+    if sampling is not None and sampling.method == "grid" and sampling.scenes is not None:
         text = "a grid has as many scenes as its cells; leave scenes out"
         found.append(document.problem(("sampling", "scenes"), text))
-    keys = [table.key for table in model.vary]
+    keys = [table.key for table in model.vary or () if table is not None]
     for index, key in enumerate(keys):
         if key in keys[:index]:
             found.append(document.problem(("vary", index, "key"), f"'{key}' varies twice"))
-    if model.image.field <= 0.0:
-        found.append(document.problem(("image", "field"), "a field has a positive side"))
 
 
 def _cells(one: Vary) -> int:

@@ -1,11 +1,15 @@
 """Quantities as people write them in files: a number and a unit, parsed by astropy, with one unit of our own.
 
-`M` is the length GM/c² of the hole at hand. A bare number where a unit is due is refused with the fix, and so is `rg`, which
-parses as rontograms. The solar mass parameter is the IAU 2015 nominal value (resolution B3).
+`M` is the length GM/c² of the hole at hand. A bare number where a unit is due is refused with the fix, and so are names that
+astropy reads as something else than was meant: `rg` (rontograms) and `mpc` (milliparsecs). The solar mass
+parameter is the IAU 2015 nominal value (resolution B3).
 """
 
 from __future__ import annotations
 
+import datetime
+import re
+from difflib import get_close_matches
 from functools import lru_cache
 
 import numpy as np
@@ -25,7 +29,26 @@ KINDS: dict[str, tuple[str, str]] = {
     "frequency": ("Hz", "230 GHz"),
     "flux density": ("Jy", "0.6 Jy"),
 }
-_SPELLINGS = {"µas": "uas", "μas": "uas", "M☉": "solMass", "M_sun": "solMass", "Msun": "solMass"}
+_SPELLINGS = {
+    **dict.fromkeys(("µas", "μas", "muas", "microarcsec"), "uas"),
+    **dict.fromkeys(("M☉", "M_☉", "M_sun", "Msun"), "solMass"),
+    **dict.fromkeys(("°", "degree", "degrees"), "deg"),
+}
+# Offered where a name is close to one of them; any other name that astropy can convert is accepted too.
+_OFFERED: dict[str, tuple[str, ...]] = {
+    "angle": ("deg", "rad", "arcmin", "arcsec"),
+    "sky angle": ("uas", "µas", "mas", "arcsec"),
+    "length": ("M",),
+    "mass": ("solMass", "Msun", "kg"),
+    "distance": ("Mpc", "kpc", "pc"),
+    "frequency": ("GHz", "MHz", "Hz"),
+    "flux density": ("Jy", "mJy"),
+}
+_GRAVITATIONAL_RADII = ("rg", "r_g", "Rg", "R_g", "GM/c^2", "GM/c²", "GM/c**2")
+_PARTS = re.compile(
+    r"([+-]?(?:\d+\.?\d*|\.\d+)(?:[eE][+-]?\d+)?|[+-]?(?:nan|inf))(?![\d.,])\s*(.*)", re.ASCII | re.DOTALL
+)
+LONGEST_SHOWN = 60
 
 
 @lru_cache(maxsize=4096)
@@ -45,28 +68,16 @@ def parse(text: str, kind: str) -> float:
         With what was given, what is accepted and how to write it.
     """
     unit, example = KINDS[kind]
-    number, _, name = text.strip().partition(" ")
-    name = _SPELLINGS.get(name.strip(), name.strip())
-    try:
-        value = float(number)
-    except ValueError:
-        raise ValueError(f"'{text}' is not a number and a unit; write it like \"{example}\"") from None
+    number, name = _split(text, example)
+    value = float(number)
     if not np.isfinite(value):
-        raise ValueError(f"'{text}' is not finite; write it like \"{example}\"")
-    if not name:
-        raise ValueError(f"'{text}' has no unit; write it like \"{example}\"")
-    if name == "rg":
-        raise ValueError(f"'{text}': gravitational radii are written M here, like \"{number} M\"")
+        raise ValueError(f'{shown(text)} is not finite; write it like "{example}"')
+    _refuse_lookalikes(number, name, kind)
     if unit == "M" or name == "M":
         if unit != name:
-            raise ValueError(f"'{text}' is not {_a(kind)}; write it like \"{example}\"")
+            raise ValueError(f'{shown(text)} is not {_a(kind)}; write it like "{example}"')
         return value
-    try:
-        return float(u.Quantity(value, name).to_value(unit))
-    except u.UnitConversionError:
-        raise ValueError(f"'{text}' is not {_a(kind)}; write it like \"{example}\"") from None
-    except (ValueError, TypeError):
-        raise ValueError(f"'{name}' is not a unit; write {_a(kind)} like \"{example}\"") from None
+    return _converted(number, name, kind)
 
 
 def parse_given(value: object, kind: str) -> float:
@@ -75,8 +86,83 @@ def parse_given(value: object, kind: str) -> float:
         return parse(value, kind)
     example = KINDS[kind][1]
     if isinstance(value, int | float) and not isinstance(value, bool):
-        raise ValueError(f'{value!r} has no unit; write it as text with one, like "{example}"')
-    raise ValueError(f'{value!r} is not {_a(kind)}; write it as text, like "{example}"')
+        raise ValueError(f'{shown(value)} has no unit; write it as text with one, like "{example}"')
+    raise ValueError(f'{shown(value)} is not {_a(kind)}; write it as text, like "{example}"')
+
+
+def plain_number(value: object) -> float:
+    """A number without a unit, out of a file.
+
+    Raises
+    ------
+    ValueError
+        If it is no number, or not a finite one.
+    """
+    if isinstance(value, bool) or not isinstance(value, int | float):
+        raise ValueError(f"{shown(value)} is not a number")
+    try:
+        number = float(value)
+    except OverflowError:
+        raise ValueError(f"{shown(value)} is too large for a number") from None
+    if not np.isfinite(number):
+        raise ValueError(f"{shown(value)} is not finite")
+    return number
+
+
+def shown(value: object) -> str:
+    """A value as it stands in a file, cut where it is long."""
+    if isinstance(value, bool):
+        return "true" if value else "false"
+    if isinstance(value, datetime.date | datetime.time):
+        return value.isoformat()
+    try:
+        text = repr(value)
+    except (ValueError, RecursionError):  # Python writes no integer of more than 4300 digits
+        return "a value too long to show"
+    return text if len(text) <= LONGEST_SHOWN else f"{text[:LONGEST_SHOWN]}…"
+
+
+def _split(text: str, example: str) -> tuple[str, str]:
+    """Number and unit of a quantity; the space between them may be missing."""
+    parts = _PARTS.fullmatch(text.strip().replace("\N{MINUS SIGN}", "-"))
+    if parts is None:
+        raise ValueError(f'{shown(text)} is not a number and a unit; write it like "{example}"')
+    number, name = parts[1], parts[2]
+    if not name:
+        raise ValueError(f'{shown(text)} has no unit; write it like "{example}"')
+    if not (name[0].isalpha() or name[0] == "°"):
+        raise ValueError(f'{shown(text)} is not a number and a unit; write it like "{example}"')
+    return number, _SPELLINGS.get(name, name)
+
+
+def _refuse_lookalikes(number: str, name: str, kind: str) -> None:
+    if name in _GRAVITATIONAL_RADII:
+        raise ValueError(f"'{number} {name}': gravitational radii are written M here, like \"{number} M\"")
+    if kind == "distance" and name == "mpc":
+        raise ValueError(f"'{number} mpc' reads as milliparsecs; megaparsecs are written \"{number} Mpc\"")
+
+
+def _converted(number: str, name: str, kind: str) -> float:
+    unit, example = KINDS[kind]
+    value, given = float(number), f"{number} {name}"
+    try:
+        quantity = u.Quantity(value, name)
+    except (ValueError, TypeError):
+        close = get_close_matches(name.lower(), [one.lower() for one in _OFFERED[kind]], n=1)
+        offered = [one for one in _OFFERED[kind] if one.lower() in close]
+        hint = f"did you mean '{offered[0]}'? Write" if offered else "write"
+        raise ValueError(f'{shown(name)} is not a unit; {hint} {_a(kind)} like "{example}"') from None
+    if kind == "frequency" and value > 0.0 and quantity.unit.is_equivalent(u.m):
+        frequency = (c / quantity).to_value("GHz")
+        raise ValueError(f'{shown(given)} is a wavelength; write the frequency, "{frequency:.4g} GHz"')
+    try:
+        with np.errstate(over="ignore"):
+            converted = float(quantity.to_value(unit))
+    except u.UnitConversionError:
+        raise ValueError(f'{shown(given)} is not {_a(kind)}; write it like "{example}"') from None
+    if not np.isfinite(converted):
+        raise ValueError(f'{shown(given)} is not finite in {unit}; write it like "{example}"')
+    return converted
 
 
 def theta_g(mass: float, distance: float) -> float:

@@ -8,6 +8,8 @@ from difflib import get_close_matches
 
 from ringwright.errors import InputError
 
+LONGEST_LINE = 160
+
 
 @dataclass(frozen=True)
 class Problem:
@@ -35,7 +37,9 @@ class Problem:
     def __str__(self) -> str:
         place = f"{self.file}:{self.line}" if self.line else self.file
         head = f"{place}: {self.key}: {self.text}" if self.key else f"{place}: {self.text}"
-        return f"{head}\n    {self.line} | {self.source.strip()}" if self.source.strip() else head
+        source = self.source.strip()
+        cut = source if len(source) <= LONGEST_LINE else f"{source[:LONGEST_LINE]}…"
+        return f"{head}\n    {self.line} | {cut}" if cut else head
 
 
 class SceneError(InputError):

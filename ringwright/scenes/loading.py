@@ -7,11 +7,8 @@ from __future__ import annotations
 
 from pathlib import Path
 
-from ringwright.scenes.models import SceneFile
 from ringwright.scenes.scene import Scene, scene_from
-from ringwright.scenes.validation import read_document, register
-
-register(SceneFile)
+from ringwright.scenes.validation import read_document
 
 
 def load_scene(path: str | Path) -> Scene:

@@ -11,6 +11,7 @@ from dataclasses import dataclass
 from typing import Annotated, Any, Literal
 
 from pydantic import (
+    AfterValidator,
     BaseModel,
     BeforeValidator,
     ConfigDict,
@@ -21,10 +22,15 @@ from pydantic import (
 )
 from pydantic_core import CoreSchema, core_schema
 
-from ringwright.units import KINDS, parse_given
+from emission.disk import SPECTRAL_INDEX_RANGE
+from ringwright.units import KINDS, parse_given, shown
 
 FEWEST_PIXELS, MOST_PIXELS = 8, 16384
 MOST_ORDERS = 6
+# Light is followed, and tested, for impact parameters from 1e-3 M to 1e6 M; wider or smaller pictures are mistaken units.
+NARROWEST_FIELD, FARTHEST = 1e-2, 1e6
+NARROWEST_RING = 1e-3  # FWHM [M]; far below any pixel, far above the spacing of doubles at FARTHEST
+WEAKEST, STRONGEST = 1e-12, 1e12  # only ratios of strengths matter; these keep products far from overflow
 
 
 @dataclass(frozen=True)
@@ -52,12 +58,12 @@ class Given:
         """The quantity as a plain number, or a ValueError that says what is accepted."""
         number = parse_given(value, self.kind)
         unit = KINDS[self.kind][0]
-        shown, scale = ("deg", math.degrees(1.0)) if unit == "rad" else (unit, 1.0)
+        name, scale = ("deg", math.degrees(1.0)) if unit == "rad" else (unit, 1.0)
         if self.low is not None and (number < self.low or (self.above and number == self.low)):
             limit = "more than" if self.above else "at least"
-            raise ValueError(f"'{value}' is too small; {limit} {self.low * scale:g} {shown} is accepted")
+            raise ValueError(f"{shown(value)} is too small; {limit} {self.low * scale:g} {name} is accepted")
         if self.high is not None and number > self.high:
-            raise ValueError(f"'{value}' is too large; at most {self.high * scale:g} {shown} is accepted")
+            raise ValueError(f"{shown(value)} is too large; at most {self.high * scale:g} {name} is accepted")
         return number
 
 
@@ -66,7 +72,9 @@ def _read_field(value: object) -> tuple[str, float]:
     kind = "length" if isinstance(value, str) and value.strip().endswith("M") else "sky angle"
     number = parse_given(value, kind)
     if number <= 0.0:
-        raise ValueError(f'\'{value}\' is too small; a field has a positive side, like "170 uas" or "40 M"')
+        raise ValueError(
+            f'{shown(value)} is too small; a field has a positive side, like "170 uas" or "40 M"'
+        )
     return KINDS[kind][0], number
 
 
@@ -78,13 +86,18 @@ Mass = Annotated[float, Given("mass", 0.0, above=True)]
 Distance = Annotated[float, Given("distance", 0.0, above=True)]
 Frequency = Annotated[float, Given("frequency", 0.0, above=True)]
 FluxDensity = Annotated[float, Given("flux density", 0.0, above=True)]
-Radius = Annotated[float, Given("length", 2.0)]
-Length = Annotated[float, Given("length", 0.0)]
-Width = Annotated[float, Given("length", 0.0, above=True)]
+Radius = Annotated[float, Given("length", 2.0, FARTHEST)]
+Length = Annotated[float, Given("length", 0.0, FARTHEST)]
+Width = Annotated[float, Given("length", NARROWEST_RING, FARTHEST)]
 Side = Annotated[
     tuple[str, float],
     BeforeValidator(_read_field),
     WithJsonSchema({"type": "string", "examples": ["170 uas", "40 M"]}),
+]
+
+
+Name = Annotated[
+    str, Field(pattern=r"^[A-Za-z0-9][A-Za-z0-9._-]*$", max_length=100, examples=['"my-nucleus"'])
 ]
 
 
@@ -108,11 +121,11 @@ class Hole(Strict):
 class View(Strict):
     """From where, how wide and how fine."""
 
-    inclination: Inclination
+    inclination: Annotated[Inclination, Field(examples=['"30 deg"'])]
     position_angle: Angle = "0 deg"  # type: ignore[assignment]
     frequency: Frequency | None = None
-    field: Side
-    pixels: Annotated[int, Field(ge=FEWEST_PIXELS, le=MOST_PIXELS)]
+    field: Annotated[Side, Field(examples=['"170 uas"', '"40 M"'])]
+    pixels: Annotated[int, Field(ge=FEWEST_PIXELS, le=MOST_PIXELS, examples=[256])]
     orders: Annotated[int, Field(ge=1, le=MOST_ORDERS)] = 3
 
 
@@ -128,9 +141,9 @@ class PowerLawProfile(Strict):
     """Brightness falls as r^-slope between two edges."""
 
     kind: Literal["power-law"]
-    inner: Radius
-    outer: Radius
-    slope: float
+    inner: Annotated[Radius, Field(examples=['"3 M"'])]
+    outer: Annotated[Radius, Field(examples=['"50 M"'])]
+    slope: Annotated[float, Field(examples=[3.7])]
     edge_width: Length = "0 M"  # type: ignore[assignment]
 
 
@@ -138,22 +151,22 @@ class GaussianRingProfile(Strict):
     """A Gaussian in radius; width is its FWHM."""
 
     kind: Literal["gaussian-ring"]
-    radius: Radius
-    width: Width
+    radius: Annotated[Radius, Field(examples=['"5 M"'])]
+    width: Annotated[Width, Field(examples=['"2 M"'])]
 
 
 class PageThorneProfile(Strict):
     """Bolometric flux of a thin accretion disk (Page & Thorne 1974)."""
 
     kind: Literal["page-thorne"]
-    outer: Radius
+    outer: Annotated[Radius, Field(examples=['"30 M"'])]
 
 
 class TableProfile(Strict):
     """Brightness against radius from a file beside the scene."""
 
     kind: Literal["table"]
-    file: str
+    file: Annotated[str, Field(examples=['"brightness.csv"'])]
 
 
 class StaticFlow(Strict):
@@ -172,8 +185,8 @@ class BlendFlow(Strict):
     """Slower than circular in turning, on the way to free fall in falling."""
 
     kind: Literal["blend"]
-    orbit_fraction: Annotated[float, Field(ge=0.0, le=1.0)]
-    fall_fraction: Annotated[float, Field(ge=0.0, le=1.0)]
+    orbit_fraction: Annotated[float, Field(ge=0.0, le=1.0, examples=[0.7])]
+    fall_fraction: Annotated[float, Field(ge=0.0, le=1.0, examples=[0.5])]
 
 
 class RadialFallFlow(Strict):
@@ -186,7 +199,16 @@ AnyProfile = Annotated[
     PowerLawProfile | GaussianRingProfile | PageThorneProfile | TableProfile, Field(discriminator="kind")
 ]
 AnyFlow = Annotated[StaticFlow | CircularFlow | BlendFlow | RadialFallFlow, Field(discriminator="kind")]
-Strength = Annotated[float, Field(ge=0.0)]
+
+
+def _in_proportion(value: float) -> float:
+    if value and value < WEAKEST:
+        raise ValueError(f"{value!r} is not accepted; 0, or {WEAKEST:g} to {STRONGEST:g}, is")
+    return value
+
+
+Strength = Annotated[float, Field(ge=0.0, le=STRONGEST), AfterValidator(_in_proportion)]
+SpectralIndex = Annotated[float, Field(ge=SPECTRAL_INDEX_RANGE[0], le=SPECTRAL_INDEX_RANGE[1])]
 
 
 class ThinDiskEmitter(Strict):
@@ -194,11 +216,13 @@ class ThinDiskEmitter(Strict):
 
     kind: Literal["thin-disk"]
     strength: Strength = 1.0
-    spectral_index: float = 0.0
+    spectral_index: SpectralIndex = 0.0
     opaque: bool = False
     slant: bool = False
-    profile: AnyProfile
-    flow: AnyFlow
+    profile: Annotated[
+        AnyProfile, Field(examples=['{ kind = "power-law", inner = "3 M", outer = "50 M", slope = 3.7 }'])
+    ]
+    flow: Annotated[AnyFlow, Field(examples=['{ kind = "circular" }'])]
 
 
 class BackdropEmitter(Strict):
@@ -214,7 +238,7 @@ AnyEmitter = Annotated[ThinDiskEmitter | BackdropEmitter, Field(discriminator="k
 class SceneFile(Strict):
     """A whole scene file."""
 
-    name: Annotated[str, Field(pattern=r"^[A-Za-z0-9][A-Za-z0-9._-]*$")]
+    name: Name
     hole: Hole = Field(default_factory=Hole)
     view: View
     source: Source = Field(default_factory=Source)

@@ -18,14 +18,16 @@ from raytrace import registry
 from raytrace.contract import Spacetime
 from ringwright.scenes import lines
 from ringwright.scenes.errors import SceneError, did_you_mean
-from ringwright.scenes.models import SceneFile, ThinDiskEmitter
-from ringwright.scenes.validation import Document, validated
+from ringwright.scenes.models import FARTHEST, NARROWEST_FIELD, Hole, SceneFile, ThinDiskEmitter
+from ringwright.scenes.validation import Document, examined, validated
 from ringwright.units import theta_g
 
 if TYPE_CHECKING:
     from emission.contract import Emitter
 
 Found = list[tuple[lines.Path, str]]
+LONGEST_INDEX = 6  # digits of an emitter's place; more is no place but a name
+LARGEST_THETA_G = 1.0  # rad: a hole seen from no farther than its own size
 
 
 @dataclass(frozen=True)
@@ -104,11 +106,15 @@ class Scene:
 
 def key_path(path: str, data: dict[str, Any]) -> lines.Path:
     """A dotted key path as parts, with the index of a single emitter filled in."""
-    parts: list[str | int] = [int(part) if part.isdigit() else part for part in path.split(".")]
+    parts: list[str | int] = [int(part) if _is_index(part) else part for part in path.split(".")]
     single = parts[0] == "emitter" and len(data.get("emitter", [])) == 1
     if single and not (len(parts) > 1 and isinstance(parts[1], int)):
         parts.insert(1, 0)
     return tuple(parts)
+
+
+def _is_index(part: str) -> bool:
+    return part.isascii() and part.isdigit() and len(part) <= LONGEST_INDEX
 
 
 def put(data: Any, path: lines.Path, value: Any) -> None:
@@ -144,19 +150,20 @@ def scene_from(document: Document, *, text: str | None = None) -> Scene:
     Raises
     ------
     SceneError
-        With every problem of single values, or else with every problem of values that do not go together.
+        With every problem of single values, and of values that do not go together where these are valid by themselves.
     """
-    model = validated(SceneFile, document)
+    model, problems = examined(SceneFile, document)
     found: Found = []
     emitters = tuple(
-        (one.strength, _emitter(one, index, document, found)) for index, one in enumerate(model.emitter)
+        (one.strength, _emitter(one, index, document, found))
+        for index, one in enumerate(model.emitter or ())
+        if one is not None
     )
-    spacetime = _spacetime(model, found)
-    theta = _theta_g(model, found)
-    found += _conflicts(model, theta, emitters)
-    if found or spacetime is None:
-        raise document.error(*found)
-    unit, side = model.view.field
+    spacetime = _spacetime(model.hole, found)
+    theta = _theta_g(model.hole, found)
+    found += _conflicts(model, theta) + _emitter_conflicts(model, emitters)
+    if problems or found or spacetime is None:
+        raise SceneError([*problems, *(document.problem(*one) for one in found)])
     source = model.source
     return Scene(
         name=model.name,
@@ -169,7 +176,7 @@ def scene_from(document: Document, *, text: str | None = None) -> Scene:
         inclination=min(model.view.inclination, math.pi),
         position_angle=model.view.position_angle,
         frequency=_quantity(model.view.frequency, "Hz"),
-        field_m=side if unit == "M" or theta is None else side / theta,
+        field_m=_side(model.view.field, theta),
         pixels=model.view.pixels,
         orders=model.view.orders,
         total_flux=_quantity(source.total_flux, "Jy"),
@@ -186,27 +193,39 @@ def _quantity(value: float | None, unit: str) -> u.Quantity | None:
     return None if value is None else u.Quantity(value, unit)
 
 
-def _spacetime(model: SceneFile, found: Found) -> Spacetime | None:
-    name = model.hole.spacetime
-    if name not in registry.SPACETIMES:
-        hint = did_you_mean(name, registry.SPACETIMES)
-        found.append((("hole", "spacetime"), f"spacetime '{name}' is not known; {hint}"))
+def _side(field: tuple[str, float], theta: float | None) -> float:
+    """Side of the image [M]."""
+    unit, side = field
+    return side if unit == "M" or theta is None else side / theta
+
+
+def _spacetime(hole: Hole | None, found: Found) -> Spacetime | None:
+    if hole is None:
         return None
-    return registry.SPACETIMES[name]()
+    if hole.spacetime not in registry.SPACETIMES:
+        hint = did_you_mean(hole.spacetime, registry.SPACETIMES)
+        found.append((("hole", "spacetime"), f"spacetime '{hole.spacetime}' is not known; {hint}"))
+        return None
+    return registry.SPACETIMES[hole.spacetime]()
 
 
-def _theta_g(model: SceneFile, found: Found) -> float | None:
-    hole = model.hole
+def _theta_g(hole: Hole | None, found: Found) -> float | None:
+    if hole is None:
+        return None
     if hole.theta_g is not None and (hole.mass is not None or hole.distance is not None):
         given = "mass" if hole.mass is not None else "distance"
-        found.append(
-            (("hole", given), "theta_g stands here already; give mass and distance, or theta_g alone")
-        )
+        text = "theta_g stands here already; give mass and distance, or theta_g alone"
+        found.append((("hole", given), text))
     elif (hole.mass is None) != (hole.distance is None):
         given, absent = ("mass", "distance") if hole.distance is None else ("distance", "mass")
         found.append((("hole", given), f"a {given} needs a {absent} beside it to give an angle on the sky"))
     elif hole.mass is not None and hole.distance is not None:
-        return theta_g(hole.mass, hole.distance)
+        theta = theta_g(hole.mass, hole.distance)
+        if not 0.0 < u.uas.to("rad", theta) < LARGEST_THETA_G:
+            text = f"with this distance theta_g is {theta:g} µas, which no hole has; check the units of both"
+            found.append((("hole", "mass"), text))
+            return None
+        return theta
     return hole.theta_g
 
 
@@ -221,10 +240,15 @@ def _emitter(one: Any, index: int, document: Document, found: Found) -> Any:
             place = ("emitter", index, "flow")
             given["flow"] = _made(FLOWS, given["flow"], document)
             place = ("emitter", index)
-        return EMITTERS[one.kind](**given)
+        made = EMITTERS[one.kind](**given)
     except (ValueError, OSError) as problem:
         found.append((place, str(problem)))
         return None
+    if made.edges and made.edges[-1] > FARTHEST:
+        text = f"this shines out to {made.edges[-1]:g} M; light is followed to {FARTHEST:g} M, so let it end there"
+        found.append((("emitter", index, "profile"), text))
+        return None
+    return made
 
 
 def _made(registered: Any, table: dict[str, Any], document: Document) -> Any:
@@ -234,25 +258,42 @@ def _made(registered: Any, table: dict[str, Any], document: Document) -> Any:
     return registered[table["kind"]](**given)
 
 
-def _conflicts(model: SceneFile, theta: float | None, emitters: tuple[tuple[float, Any], ...]) -> Found:
+def _conflicts(model: SceneFile, theta: float | None) -> Found:
+    """What does not go together in the tables beside the emitters."""
     found: Found = []
-    if model.view.field[0] == "uas" and theta is None:
+    if model.source is not None and (model.source.right_ascension is None) != (
+        model.source.declination is None
+    ):
+        found.append((("source",), "right_ascension and declination go together; give both or none"))
+    if model.hole is None or model.view is None:
+        return found
+    on_sky = model.view.field[0] == "uas"
+    if on_sky and theta is None and model.hole.mass is None and model.hole.distance is None:
         text = "a field on the sky needs theta_g (or mass and distance) in [hole]; or give the field in M"
         found.append((("view", "field"), text))
-    if (model.source.right_ascension is None) != (model.source.declination is None):
-        found.append((("source",), "right_ascension and declination go together; give both or none"))
-    if all(strength == 0.0 for strength, _ in emitters):
+    elif not (on_sky and theta is None) and not NARROWEST_FIELD <= _side(model.view.field, theta) <= FARTHEST:
+        side = _side(model.view.field, theta)
+        text = f"the field is {side:g} M wide; {NARROWEST_FIELD:g} M to {FARTHEST:g} M is accepted (check the units)"
+        found.append((("view", "field"), text))
+    return found
+
+
+def _emitter_conflicts(model: SceneFile, emitters: tuple[tuple[float, Any], ...]) -> Found:
+    """What does not go together among emitters, or between them and the source; those that could not be built are passed over."""
+    found: Found = []
+    whole = [one for one in model.emitter or () if one is not None]
+    if whole and len(whole) == len(model.emitter) and all(one.strength == 0.0 for one in whole):
         found.append((("emitter",), "every strength is 0, so nothing shines; raise one"))
-    bolometric = [emitter is not None and emitter.bolometric for _, emitter in emitters]
-    if any(bolometric) and model.source.total_flux is not None:
+    bolometric = [emitter.bolometric for _, emitter in emitters if emitter is not None]
+    if any(bolometric) and model.source is not None and model.source.total_flux is not None:
         text = "a bolometric image has no flux density; leave total_flux out (the image is normalised to 1)"
         found.append((("source", "total_flux"), text))
-    if any(bolometric) and not all(bolometric) and len(emitters) > 1:
+    if any(bolometric) and not all(bolometric):
         found.append((("emitter",), "a bolometric emitter cannot be added to one at a single frequency"))
-    opaque = [emitter is not None and emitter.opaque for _, emitter in emitters]
-    if any(opaque) and len(emitters) > 1:
-        text = "an opaque disk hides what is behind it, which is not followed across emitters; let it stand alone"
-        found.append((("emitter", opaque.index(True), "opaque"), text))
+    text = "an opaque disk hides what is behind it, which is not followed across emitters; let it stand alone"
+    for index, one in enumerate(model.emitter or ()):
+        if isinstance(one, ThinDiskEmitter) and one.opaque and len(model.emitter) > 1:
+            found.append((("emitter", index, "opaque"), text))
     return found
 
 

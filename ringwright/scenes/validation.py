@@ -8,13 +8,16 @@ from __future__ import annotations
 
 import tomllib
 from collections.abc import Callable, Iterable, Mapping
+from difflib import get_close_matches
 from pathlib import Path as FilePath
-from typing import Any, TypeVar, get_args
+from typing import Any, TypeVar, get_args, get_origin
 
-from pydantic import BaseModel, ValidationError
+from pydantic import BaseModel, TypeAdapter, ValidationError
+from pydantic.fields import FieldInfo
 
 from ringwright.scenes.errors import Problem, SceneError, did_you_mean
 from ringwright.scenes.lines import Path, key_lines
+from ringwright.units import shown
 
 Model = TypeVar("Model", bound=BaseModel)
 LARGEST_FILE = 2**22
@@ -32,7 +35,12 @@ class Document:
     def line_of(self, path: Path) -> int | None:
         """The line of a key, or of the nearest table around it that stands in the file."""
         if self._lines is None:
-            self._lines = key_lines(self.text) if self.text else {}
+            try:
+                self._lines = key_lines(self.text)
+            except (
+                RecursionError
+            ):  # nested as deeply as tomllib can follow: the problem is told without its line
+                self._lines = {}
         while path:
             if path in self._lines:
                 return self._lines[path]
@@ -42,7 +50,7 @@ class Document:
     def problem(self, path: Path, text: str) -> Problem:
         """A problem at a key of this document."""
         line = self.line_of(path)
-        source = self.text.splitlines()[line - 1] if line else ""
+        source = self.text.split("\n")[line - 1] if line else ""
         return Problem(self.path, line, dotted(path), text, source)
 
     def error(self, *found: tuple[Path, str]) -> SceneError:
@@ -62,18 +70,27 @@ def read_document(path: str | FilePath) -> Document:
     try:
         raw = FilePath(path).read_bytes()
     except OSError as problem:
-        raise SceneError(
-            [Problem(name, None, "", f"cannot be read: {problem.strerror or problem}")]
-        ) from None
+        reason = problem.strerror or str(problem)
+        raise SceneError([Problem(name, None, "", f"cannot be read: {reason}")]) from None
+    except ValueError as problem:  # a null character in the name
+        raise SceneError([Problem(name, None, "", f"cannot be read: {problem}")]) from None
     if len(raw) > LARGEST_FILE:
         raise SceneError([Problem(name, None, "", "is larger than 4 MiB and so is no file of this kind")])
     try:
-        text = raw.decode("utf-8")
+        text = raw.decode("utf-8-sig")
         return Document(name, text, tomllib.loads(text))
     except UnicodeDecodeError:
         raise SceneError([Problem(name, None, "", "is not text in UTF-8")]) from None
-    except (tomllib.TOMLDecodeError, RecursionError) as problem:
+    except RecursionError:
+        raise SceneError(
+            [Problem(name, None, "", "is nested too deeply to be a file of this kind")]
+        ) from None
+    except tomllib.TOMLDecodeError as problem:
         raise SceneError([Problem(name, _toml_line(str(problem)), "", f"is not TOML: {problem}")]) from None
+    except ValueError:
+        raise SceneError(
+            [Problem(name, None, "", "holds a number of more digits than can be read")]
+        ) from None
 
 
 def validated(model: type[Model], document: Document) -> Model:
@@ -84,10 +101,44 @@ def validated(model: type[Model], document: Document) -> Model:
     SceneError
         With every problem that the model finds.
     """
+    whole, problems = examined(model, document)
+    if problems:
+        raise SceneError(problems)
+    return whole
+
+
+def examined(model: type[Model], document: Document) -> tuple[Model, list[Problem]]:
+    """The document as a model, with every problem that the model finds.
+
+    Where there are any, parts of the model that are valid by themselves are kept and the others are None, so that what several
+    keys must satisfy together can still be checked where it can be.
+    """
     try:
-        return model.model_validate(document.data)
+        return model.model_validate(document.data), []
     except ValidationError as failure:
-        raise SceneError(_worded(document, error) for error in failure.errors(include_url=False)) from None
+        problems = [_worded(model, document, error) for error in failure.errors(include_url=False)]
+        return _valid_parts(model, document.data), problems
+
+
+def _valid_parts(model: type[Model], data: dict[str, Any]) -> Model:
+    parts: dict[str, Any] = {}
+    for name, info in model.model_fields.items():
+        given = data.get(info.alias or name)
+        if given is None:
+            parts[name] = None if info.is_required() else info.get_default(call_default_factory=True)
+        elif get_origin(info.annotation) is list:
+            (inner,) = get_args(info.annotation)
+            parts[name] = [_valid(inner, one) for one in given] if isinstance(given, list) else None
+        else:
+            parts[name] = _valid(info.annotation, given)
+    return model.model_construct(**parts)
+
+
+def _valid(annotation: Any, given: Any) -> Any:
+    try:
+        return TypeAdapter(annotation).validate_python(given)
+    except ValidationError:
+        return None
 
 
 def dotted(path: Iterable[str | int]) -> str:
@@ -95,17 +146,21 @@ def dotted(path: Iterable[str | int]) -> str:
     return ".".join(str(part) for part in path)
 
 
-def _worded(document: Document, error: Mapping[str, Any]) -> Problem:
+def _worded(model: type[BaseModel], document: Document, error: Mapping[str, Any]) -> Problem:
     path = _in_file(document.data, error["loc"], absent=error["type"] == "missing")
     if error["type"] == "union_tag_invalid":
         path = (*path, "kind")
+    if error["type"] == "missing":
+        return document.problem(path, _missing(model, document.data, path))
+    if error["type"] == "extra_forbidden":
+        return document.problem(path, _extra(model, document.data, path))
     given = error["input"]
     context = error.get("ctx", {})
     words = _WORDS.get(error["type"])
     if words is not None:
-        return document.problem(path, words(given, context, path))
+        return document.problem(path, words(given, context))
     text = str(context.get("error", error["msg"]))
-    return document.problem(path, text if context.get("error") else f"{given!r}: {text.lower()}")
+    return document.problem(path, text if context.get("error") else f"{shown(given)}: {text.lower()}")
 
 
 def _in_file(data: Any, place: tuple[str | int, ...], *, absent: bool) -> Path:
@@ -122,46 +177,72 @@ def _in_file(data: Any, place: tuple[str | int, ...], *, absent: bool) -> Path:
     return path
 
 
-def _missing(given: Any, context: Mapping[str, Any], path: Path) -> str:
+def _missing(model: type[BaseModel], data: Any, path: Path) -> str:
+    """That a key is missing, and how it is written or why it has no default."""
+    infos = [info for table in _tables(model, data, path[:-1]) for info in _keys(table, path[-1])]
+    info = infos[0] if infos else FieldInfo()
+    if info.description:
+        return f"is missing and has no default, {info.description}"
+    if info.examples:
+        return f"is missing and has no default; write it like {path[-1]} = {info.examples[0]}"
     return "is missing and has no default"
 
 
-def _extra(given: Any, context: Mapping[str, Any], path: Path) -> str:
-    return f"nothing reads this key; {did_you_mean(str(path[-1]), accepted_keys(path[:-1]))}"
+def _extra(model: type[BaseModel], data: Any, path: Path) -> str:
+    key = str(path[-1])
+    accepted = accepted_keys(model, data, path[:-1])
+    places = _homes(model, key)
+    if tuple(part for part in path[:-1] if isinstance(part, str)) in places:
+        return f"this kind does not read this key; {did_you_mean(key, accepted)}"
+    homes = sorted(dotted(home) or "the top of the file, before the first [table]" for home in places)
+    if homes and not (len(homes) > MOST_HOMES or get_close_matches(key, accepted)):
+        return f"nothing reads this key here; it belongs to {' or '.join(homes)}"
+    return f"nothing reads this key; {did_you_mean(key, accepted)}"
 
 
-def _unknown_kind(given: Any, context: Mapping[str, Any], path: Path) -> str:
-    accepted = [word.strip(" '") for word in str(context.get("expected_tags", "")).split(",")]
-    return (
-        f"kind {context.get('tag', '')!r} is not known; {did_you_mean(str(context.get('tag', '')), accepted)}"
-    )
+def _unknown_kind(given: Any, context: Mapping[str, Any]) -> str:
+    kind = str(context["tag"])
+    return f"kind {shown(kind)} is not known; {did_you_mean(kind, _words_of(context['expected_tags']))}"
 
 
-def _no_kind(given: Any, context: Mapping[str, Any], path: Path) -> str:
+def _no_kind(given: Any, context: Mapping[str, Any]) -> str:
     return 'has no kind; write it as a table with a kind, such as { kind = "circular" }'
 
 
-def _choice(given: Any, context: Mapping[str, Any], path: Path) -> str:
-    accepted = [word.strip(" '") for word in str(context["expected"]).replace(" or ", ",").split(",")]
-    return f"{given!r} is not known; {did_you_mean(str(given), accepted)}"
+def _choice(given: Any, context: Mapping[str, Any]) -> str:
+    return f"{shown(given)} is not known; {did_you_mean(str(given), _words_of(context['expected']))}"
 
 
-def _type(name: str) -> Callable[[Any, Mapping[str, Any], Path], str]:
-    return lambda given, context, path: f"{given!r} is not {name}"
+def _words_of(listed: str) -> list[str]:
+    return [word.strip(" '") for word in listed.replace(" or ", ",").split(",")]
 
 
-def _limit(words: str, bound: str) -> Callable[[Any, Mapping[str, Any], Path], str]:
-    return lambda given, context, path: f"{given!r} is not accepted; {words} {context[bound]:g} is"
+def _too_many(given: Any, context: Mapping[str, Any]) -> str:
+    return f"{shown(given)} has {context['actual_length']} entries; {context['max_length']} are due"
 
 
-_WORDS: dict[str, Callable[[Any, Mapping[str, Any], Path], str]] = {
-    "missing": _missing,
-    "extra_forbidden": _extra,
+def _too_few(given: Any, context: Mapping[str, Any]) -> str:
+    if context["min_length"] == 1:
+        return "is empty; at least one is needed"
+    return f"{shown(given)} has {context['actual_length']} entries; {context['min_length']} are due"
+
+
+def _type(name: str) -> Callable[[Any, Mapping[str, Any]], str]:
+    return lambda given, context: f"{shown(given)} is not {name}"
+
+
+def _limit(words: str, bound: str) -> Callable[[Any, Mapping[str, Any]], str]:
+    return lambda given, context: f"{shown(given)} is not accepted; {words} {context[bound]:g} is"
+
+
+MOST_HOMES = 2  # a key that belongs to more tables than this says nothing about where it was meant to stand
+_WORDS: dict[str, Callable[[Any, Mapping[str, Any]], str]] = {
     "union_tag_invalid": _unknown_kind,
     "union_tag_not_found": _no_kind,
     "literal_error": _choice,
     "float_type": _type("a number"),
     "int_type": _type("a whole number"),
+    "int_parsing_size": _type("a whole number of this size"),
     "bool_type": _type("true or false"),
     "string_type": _type("text"),
     "list_type": _type("a list"),
@@ -173,33 +254,58 @@ _WORDS: dict[str, Callable[[Any, Mapping[str, Any], Path], str]] = {
     "less_than_equal": _limit("at most", "le"),
     "greater_than": _limit("more than", "gt"),
     "less_than": _limit("less than", "lt"),
-    "too_short": lambda given, context, path: "is empty; at least one is needed",
-    "string_pattern_mismatch": lambda given, context, path: (
-        f"{given!r} cannot name files; use letters, digits, dots, dashes and underscores"
+    "too_long": _too_many,
+    "too_short": _too_few,
+    "string_pattern_mismatch": lambda given, context: (
+        f"{shown(given)} cannot name files; use letters, digits, dots, dashes and underscores"
     ),
 }
 
-_registered: list[type[BaseModel]] = []
+
+def accepted_keys(model: type[BaseModel], data: Any, path: Path) -> set[str]:
+    """Every key that a file of this model accepts in the table at a path, given the kinds that its data name."""
+    return {
+        info.alias or name
+        for table in _tables(model, data, path)
+        for name, info in table.model_fields.items()
+    }
 
 
-def register(*models: type[BaseModel]) -> None:
-    """Tell which models stand for whole files, so that unknown keys can be met with the known ones."""
-    _registered.extend(models)
-
-
-def accepted_keys(path: Path) -> set[str]:
-    """Every key that any registered file accepts within a table of this path."""
-    models: set[type[BaseModel]] = set(_registered)
+def _tables(model: type[BaseModel], data: Any, path: Path) -> set[type[BaseModel]]:
+    """The models that the table at a path may have; one of them where its data name a kind."""
+    models = {model}
     for part in path:
+        try:
+            data = data[part]
+        except (KeyError, IndexError, TypeError):
+            data = None
         if isinstance(part, int):
-            continue
-        models = {
-            inner
-            for model in models
-            if part in model.model_fields
-            for inner in _models_in(model.model_fields[part].annotation)
-        }
-    return {info.alias or name for model in models for name, info in model.model_fields.items()}
+            if data is None:
+                return set()
+        else:
+            infos = [info for one in models for info in _keys(one, part)]
+            models = {inner for info in infos for inner in _models_in(info.annotation)}
+        named = {one for one in models if isinstance(data, dict) and data.get("kind") in _kinds(one)}
+        models = named or models
+    return models
+
+
+def _keys(model: type[BaseModel], key: str | int) -> list[FieldInfo]:
+    return [info for name, info in model.model_fields.items() if (info.alias or name) == key]
+
+
+def _kinds(model: type[BaseModel]) -> tuple[Any, ...]:
+    info = model.model_fields.get("kind")
+    return get_args(info.annotation) if info else ()
+
+
+def _homes(model: type[BaseModel], key: str, path: tuple[str, ...] = ()) -> set[tuple[str, ...]]:
+    """Paths of the tables that have a key of this name."""
+    found = {path} if _keys(model, key) else set()
+    for name, info in model.model_fields.items():
+        for inner in _models_in(info.annotation):
+            found |= _homes(inner, key, (*path, info.alias or name))
+    return found
 
 
 def _models_in(annotation: Any) -> set[type[BaseModel]]:

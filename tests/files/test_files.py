@@ -6,6 +6,7 @@ import contextlib
 import json
 import math
 import pickle
+import re
 import subprocess
 import sys
 import tomllib
@@ -149,6 +150,8 @@ def test_replace_changes_one_value_and_validates(project):
         ("view.inclination", "200 deg", "at most 180 deg"),
         ("view.inclinaton", "20 deg", "did you mean 'inclination'"),
         ("emitter.2.profile.inner", "3 M", "is no key of this scene"),
+        ("emitter.²", "3 M", "nothing reads this key"),
+        ("emitter." + "9" * 5000, "3 M", "nothing reads this key"),
     ):
         with pytest.raises(rw.SceneError, match=words):
             scene.replace(key, value)
@@ -189,6 +192,16 @@ def test_loading_is_light():
     )
     for heavy in ("matplotlib", "scipy", "astropy.wcs", "pandas", "numba"):
         assert f"'{heavy}'" not in run.stdout, heavy
+
+
+def test_what_the_observation_starter_offers_in_comments_can_be_taken(tmp_path):
+    text = new_file("observation", tmp_path / "ring.toml").read_text(encoding="utf-8")
+    lines = [re.sub(r'^# (?=\[|\w+ = |")', "", line) for line in text.splitlines()]
+    one_prior = [line for line in lines if not line.startswith("theta_g =")]
+    (tmp_path / "ring.toml").write_text("\n".join(one_prior), encoding="utf-8")
+    observation = load_observation(tmp_path / "ring.toml")
+    assert observation.mass is not None
+    assert list(observation.scene_priors) == ["view.inclination"]
 
 
 def test_the_schema_names_every_key_of_a_scene():

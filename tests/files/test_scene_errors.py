@@ -39,6 +39,42 @@ WRONG = [
     ('"25 deg"', '"-1 deg"', 6, "view.inclination", "at least 0 deg is accepted"),
     ('"25 deg"', '"181 deg"', 6, "view.inclination", "at most 180 deg is accepted"),
     ('"25 deg"', '"nan deg"', 6, "view.inclination", "is not finite"),
+    ('"25 deg"', '"25,5 deg"', 6, "view.inclination", "is not a number and a unit"),
+    ('"25 deg"', '"25 10 deg"', 6, "view.inclination", "is not a number and a unit"),
+    ('"230 GHz"', '"230 GHZ"', 7, "view.frequency", "did you mean 'GHz'?"),
+    ('"230 GHz"', '"1.3 mm"', 7, "view.frequency", 'a wavelength; write the frequency, "230.6 GHz"'),
+    ('"21 Mpc"', '"21 mpc"', 4, "hole.distance", 'megaparsecs are written "21 Mpc"'),
+    ('"21 Mpc"', '"1e-320 Mpc"', 3, "hole.mass", "check the units of both"),
+    ('"200 uas"', '"1e306 arcsec"', 8, "view.field", "is not finite in uas"),
+    ('"200 uas"', '"200 arcsec"', 8, "view.field", "0.01 M to 1e+06 M is accepted (check the units)"),
+    ('"200 uas"', '"1e-3 M"', 8, "view.field", "0.01 M to 1e+06 M is accepted"),
+    ('"50 M"', '"1e308 M"', 14, "emitter.0.profile.outer", "at most 1e+06 M is accepted"),
+    ('field = "200 uas"\n', "", 5, "view.field", 'write it like field = "170 uas"'),
+    ("pixels = 64", f"pixels = 0x{'f' * 4000}", 9, "view.pixels", "at most 16384 is"),
+    ("pixels = 64", "pixels = 1979-05-27", 9, "view.pixels", "1979-05-27 is not a whole number"),
+    ('name = "nucleus"', 'name = "nucleus"\ntotal_flux = "1 Jy"', 2, "total_flux", "it belongs to source"),
+    ('distance = "21 Mpc"', 'distance = "21 Mpc"\nname = "x"', 5, "hole.name", "before the first [table]"),
+    (
+        'kind = "thin-disk"',
+        'kind = "thin-disk"\ninner = "3 M"',
+        14,
+        "emitter.0.inner",
+        "belongs to emitter.profile",
+    ),
+    (
+        "slope = 3.7",
+        'slope = 3.7, width = "1 M"',
+        14,
+        "emitter.0.profile.width",
+        "this kind does not read this key",
+    ),
+    (
+        'kind = "thin-disk"',
+        'kind = "thin-disk"\nstrength = 1e-300',
+        14,
+        "emitter.0.strength",
+        "1e-12 to 1e+12",
+    ),
     ('"25 deg"', "true", 6, "view.inclination", "is not an angle"),
     (
         '"2.6 M"',
@@ -84,7 +120,13 @@ WRONG = [
     ('name = "nucleus"', "name = 3", 1, "name", "is not text"),
     ('kind = "thin-disk"', 'kind = "thin-disk"\nstrength = -1.0', 14, "emitter.0.strength", "at least 0 is"),
     ('kind = "thin-disk"', 'kind = "thin-disk"\nstrength = 0.0', 12, "emitter", "every strength is 0"),
-    ('kind = "thin-disk"', 'kind = "thin-disk"\nspectral_index = 99.0', 12, "emitter.0", "spectral index"),
+    (
+        'kind = "thin-disk"',
+        'kind = "thin-disk"\nspectral_index = 99.0',
+        14,
+        "emitter.0.spectral_index",
+        "at most 10 is",
+    ),
     (
         'flow = { kind = "circular" }\n',
         'opaque = true\nflow = { kind = "circular" }\n' + SECOND,
@@ -154,6 +196,60 @@ def test_all_problems_come_at_once_by_line(path):
     for problem in found:
         assert f"{path}:{problem.line}: {problem.key}" in message
     assert "    6 | inclination = 25" in message
+
+
+def test_values_that_do_not_go_together_are_found_beside_values_that_are_wrong(path):
+    text = GOOD.replace('"25 deg"', "25").replace('"2.6 M"', '"60 M"').replace('distance = "21 Mpc"\n', "")
+    assert [problem.key for problem in problems(path, text)] == [
+        "hole.mass",
+        "view.inclination",
+        "emitter.0.profile",
+    ]
+
+
+def test_the_source_line_is_the_line_whatever_stands_before_it(path):
+    (problem,) = problems(
+        path, "# a line\u2028separator, which ends no line of TOML\n" + GOOD.replace('"25 deg"', "25")
+    )
+    assert (problem.line, problem.source) == (7, "inclination = 25")
+
+
+@pytest.mark.parametrize("text", ["x = " + "9" * 5000, "x = " + "[" * 3000, "x = " + "{a = " * 3000])
+def test_monstrous_documents_are_refused_in_words(path, text):
+    (problem,) = problems(path, text)
+    assert "more digits than can be read" in problem.text or "nested too deeply" in problem.text
+
+
+def test_a_byte_order_mark_is_no_problem(path):
+    path.write_bytes(b"\xef\xbb\xbf" + GOOD.encode())
+    assert rw.load_scene(path).name == "nucleus"
+
+
+@pytest.mark.parametrize(
+    ("old", "new"),
+    [
+        ('"25 deg"', '"25deg"'),
+        ('"25 deg"', '"25°"'),
+        ('"25 deg"', '"25 degrees"'),
+        ('"9.2e9 solMass"', '"9.2e9 Msun"'),
+        ('"9.2e9 solMass"', '"9.2e9 M☉"'),
+        ('"21 Mpc"', '"21000 kpc"'),
+        ('"200 uas"', '"200 µas"'),
+        ('"200 uas"', '"0.2mas"'),
+        ('"2.6 M"', '"2.6M"'),
+        ('"0.6 Jy"', '"600 mJy"'),
+    ],
+)
+def test_quantities_are_read_as_people_write_them(path, old, new):
+    path.write_text(GOOD, encoding="utf-8")
+    plain = rw.load_scene(path)
+    path.write_text(GOOD.replace(old, new, 1), encoding="utf-8")
+    other = rw.load_scene(path)
+    for name in ("inclination", "field_m"):
+        assert getattr(other, name) == pytest.approx(getattr(plain, name), rel=1e-14)
+    for name in ("theta_g", "total_flux"):
+        assert getattr(other, name).value == pytest.approx(getattr(plain, name).value, rel=1e-14)
+    assert other.emitters == plain.emitters
 
 
 def test_a_missing_table_is_named(path):

@@ -60,9 +60,7 @@ def _writable_base() -> Path:
     return temporary
 
 
-def kernel(
-    *, parallel: bool = False, inline: bool = False, strict: bool = True
-) -> Callable[[Callable[..., Any]], Any]:
+def kernel(*, parallel: bool = False, inline: bool = False) -> Callable[[Callable[..., Any]], Any]:
     """Compile a function with the project's one set of numba options.
 
     Parameters

@@ -1,8 +1,8 @@
-"""Images of equatorial circles: where on the screen the circle of radius r appears, order by order, and the critical curve.
+"""Images of equatorial circles: where on the screen the circle of radius r appears, order by order; the critical curve.
 
-At a fixed screen angle the crossing radius of a given order grows with the distance b from the screen's
-origin, so the image is the root of r(b) = r, found by Chandrupatla's bracketing method (1997, Adv. Eng.
-Softw. 28, 145) from SciPy. G = c = M = 1; angles in radians; nothing here depends on a particular metric.
+At a fixed screen angle the crossing radius of a given order grows with the distance b from the screen's origin, so the
+image is the root of r(b) = r, found by the bracketing method of `raytrace.roots`. G = c = M = 1; angles in radians;
+nothing here depends on a particular metric.
 """
 
 from __future__ import annotations
@@ -14,14 +14,14 @@ from numpy.typing import ArrayLike, NDArray
 
 from raytrace.contract import Array, RayStatus, Spacetime
 from raytrace.registry import or_default
+from raytrace.roots import bracketed_roots
 
 # Outside this factor times the radius no image of a circle lies: the direct image of a distant circle is at
 # b ≈ r + 1.
 BRACKET_GROWTH = 1.25
 BRACKET_OFFSET = 12.0
-# Relative tolerance of b: a few units in the last place, so that ∂b/∂r of high orders keeps its digits.
-ROOT_TOLERANCE = 4.0 * np.finfo(np.float64).eps
-ROOT_ITERATIONS = 120
+# A ray this close to the origin falls in as the radial one does, which has no screen angle and edge-on lies in the plane.
+NEARLY_RADIAL = 1e-12
 
 
 def critical_curve(
@@ -114,32 +114,16 @@ def checked_inclination(inclination: float) -> float:
 
 
 def _solve(hole: Spacetime, radii: Array, angles: Array, inclination: float, order: int) -> Array:
-    from scipy.optimize import elementwise
+    target = 1.0 / radii
 
-    def inverse_radius(b: Array, angle: Array) -> Array:
+    def mismatch(b: Array, index: NDArray[np.int64]) -> Array:
         hit = hole.trace_rays(
-            np.ascontiguousarray((b * np.cos(angle)).ravel()),
-            np.ascontiguousarray((b * np.sin(angle)).ravel()),
-            inclination,
-            order + 1,
-            False,
-            False,
-            False,
+            b * np.cos(angles[index]), b * np.sin(angles[index]), inclination, order + 1, False, False, False
         )
-        return _monotone(hit.radius[order], hit.status[order], hole.horizon).reshape(b.shape)
-
-    def mismatch(b: Array, angle: Array, target: Array) -> Array:
-        return inverse_radius(b, angle) - target
+        return _monotone(hit.radius[order], hit.status[order], hole.horizon) - target[index]
 
     far = BRACKET_GROWTH * radii + BRACKET_OFFSET
-    result = elementwise.find_root(
-        mismatch,
-        (np.zeros_like(radii), far),
-        args=(angles, 1.0 / radii),
-        tolerances={"xatol": 0.0, "xrtol": ROOT_TOLERANCE, "fatol": 0.0, "frtol": 0.0},
-        maxiter=ROOT_ITERATIONS,
-    )
-    return np.where(result.status == -2, np.nan, result.x)
+    return bracketed_roots(mismatch, np.full_like(radii, NEARLY_RADIAL), far)
 
 
 def _monotone(radius: Array, status: NDArray[np.int8], horizon: float) -> Array:

@@ -14,10 +14,12 @@ from functools import lru_cache
 
 import numpy as np
 from astropy import units as u
-from astropy.constants import c
 
 GM_SUN = 1.3271244e20 * u.m**3 / u.s**2
-THETA_G_OF_SUN = float((GM_SUN / c**2 / u.Mpc).to_value("")) * u.rad.to("uas")  # µas for 1 M☉ at 1 Mpc
+SPEED_OF_LIGHT = 299_792_458.0 * u.m / u.s  # exact in the SI
+THETA_G_OF_SUN = float((GM_SUN / SPEED_OF_LIGHT**2 / u.Mpc).to_value("")) * u.rad.to(
+    "uas"
+)  # µas for 1 M☉ at 1 Mpc
 
 # What each kind of quantity is kept in, and how an example of it is written.
 KINDS: dict[str, tuple[str, str]] = {
@@ -153,7 +155,7 @@ def _converted(number: str, name: str, kind: str) -> float:
         hint = f"did you mean '{offered[0]}'? Write" if offered else "write"
         raise ValueError(f'{shown(name)} is not a unit; {hint} {_a(kind)} like "{example}"') from None
     if kind == "frequency" and value > 0.0 and quantity.unit.is_equivalent(u.m):
-        frequency = (c / quantity).to_value("GHz")
+        frequency = (SPEED_OF_LIGHT / quantity).to_value("GHz")
         raise ValueError(f'{shown(given)} is a wavelength; write the frequency, "{frequency:.4g} GHz"')
     try:
         with np.errstate(over="ignore"):

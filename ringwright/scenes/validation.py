@@ -6,6 +6,7 @@ taken out, so that a path is what stands in the file.
 
 from __future__ import annotations
 
+import re
 import tomllib
 from collections.abc import Callable, Iterable, Mapping
 from difflib import get_close_matches
@@ -86,7 +87,10 @@ def read_document(path: str | FilePath) -> Document:
             [Problem(name, None, "", "is nested too deeply to be a file of this kind")]
         ) from None
     except tomllib.TOMLDecodeError as problem:
-        raise SceneError([Problem(name, _toml_line(str(problem)), "", f"is not TOML: {problem}")]) from None
+        line = _toml_line(str(problem))
+        # A document that is not TOML may hold control characters, which a terminal would obey.
+        source = re.sub(r"[\x00-\x1f\x7f-\x9f]", " ", text.split("\n")[line - 1]) if line else ""
+        raise SceneError([Problem(name, line, "", f"is not TOML: {problem}", source)]) from None
     except ValueError:
         raise SceneError(
             [Problem(name, None, "", "holds a number of more digits than can be read")]

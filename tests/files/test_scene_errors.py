@@ -261,6 +261,9 @@ def test_what_is_not_toml_or_not_text_is_said_with_its_line(path):
     (problem,) = problems(path, GOOD.replace('"25 deg"', '"25 deg'))
     assert problem.line == 6
     assert "is not TOML" in problem.text
+    assert problem.source == GOOD.split("\n")[5].replace('"25 deg"', '"25 deg')
+    (problem,) = problems(path, GOOD.replace('"25 deg"', '"25 \x1b[2J deg"'))
+    assert problem.source.isprintable(), "a terminal would obey the control characters of a broken file"
     path.write_bytes(b"\xff\xfe\x00")
     with pytest.raises(rw.SceneError, match="is not text in UTF-8"):
         rw.load_scene(path)

@@ -141,7 +141,7 @@ def test_from_starter_files_to_a_mass(capsys, monkeypatch, tmp_path):
     for kind in ("observation", "scene", "scan"):
         assert main(["new", kind, f"{kind}.toml"]) == 0
     assert "exists and is kept" in refused(capsys, "new", "scan", "scan.toml")
-    text = (tmp_path / "scan.toml").read_text().replace("scenes = 256", "scenes = 8").replace("224", "96")
+    text = (tmp_path / "scan.toml").read_text().replace("scenes = 256", "scenes = 8").replace("192", "96")
     (tmp_path / "scan.toml").write_text(text)
     assert main(["scan", "scan.toml", "--workers", "1"]) == 0
     assert main(["compare", "observation.toml", "outputs/my-scan.h5"]) == 0

@@ -9,7 +9,7 @@ from __future__ import annotations
 import numpy as np
 from numpy.typing import ArrayLike
 
-from raytrace.contract import Array, Spacetime
+from raytrace.contract import FARTHEST, Array, Spacetime
 from raytrace.registry import or_default
 from raytrace.schwarzschild import Schwarzschild
 
@@ -31,12 +31,14 @@ def deflection(b: ArrayLike, *, spacetime: Spacetime | None = None) -> Array | n
     Raises
     ------
     ValueError
-        If an impact parameter is not finite, or the spacetime is another one.
+        If an impact parameter is not finite or beyond 1e150 M, or the spacetime is another one.
     """
     require_schwarzschild(or_default(spacetime), "a deflection against b alone")
     parameters = np.asarray(b, dtype=np.float64)
-    if not np.isfinite(parameters).all():
-        raise ValueError("an impact parameter is not finite; give finite values of b [M]")
+    if not np.max(np.abs(parameters), initial=0.0) <= FARTHEST:
+        raise ValueError(
+            f"an impact parameter is not finite or lies beyond {FARTHEST:g} M; give finite values of b [M]"
+        )
     from raytrace.kernels.timing import deflections
 
     angle = deflections(np.abs(parameters).ravel()).reshape(parameters.shape)

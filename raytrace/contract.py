@@ -14,6 +14,8 @@ import numpy as np
 from numpy.typing import ArrayLike, NDArray
 
 Array = NDArray[np.float64]
+# Length [M] beyond which rays are refused: not far above it a square leaves the range of floating-point numbers.
+FARTHEST = 1e150
 
 
 class RayStatus(IntEnum):

@@ -9,7 +9,7 @@ from __future__ import annotations
 import numpy as np
 from numpy.typing import ArrayLike
 
-from raytrace.contract import Hit, Spacetime
+from raytrace.contract import FARTHEST, Hit, Spacetime
 from raytrace.isoradials import checked_inclination
 from raytrace.registry import or_default
 
@@ -48,7 +48,7 @@ def trace(
     Raises
     ------
     ValueError
-        If positions are not finite one-dimensional arrays of one length, or orders or inclination make no sense.
+        If positions are not finite one-dimensional arrays of one length, lie beyond 1e150 M, or orders or inclination make no sense.
     """
     hole = or_default(spacetime)
     scalar = np.ndim(alpha) == 0 and np.ndim(beta) == 0
@@ -58,14 +58,26 @@ def trace(
             f"alpha and beta have the shapes {np.shape(alpha)} and {np.shape(beta)}; give two numbers or two "
             "one-dimensional arrays of one length"
         )
-    if not (np.isfinite(x).all() and np.isfinite(y).all()):
-        raise ValueError("a screen position is not finite; every ray needs a finite alpha and beta [M]")
-    if isinstance(orders, bool) or int(orders) != orders or orders < 1:
+    if not all(np.max(np.abs(axis), initial=0.0) <= FARTHEST for axis in (x, y)):
+        raise ValueError(
+            f"a screen position is not finite or lies beyond {FARTHEST:g} M; every ray needs a finite alpha and beta [M]"
+        )
+    count = _checked_count(orders)
+    hit = hole.trace_rays(x, y, checked_inclination(inclination), count, azimuth, delay, momentum)
+    return _first_ray(hit) if scalar else hit
+
+
+def _checked_count(orders: int) -> int:
+    """The number of orders as an int, or a ValueError."""
+    try:
+        count = 0 if isinstance(orders, bool) or int(orders) != orders else int(orders)
+    except (TypeError, ValueError, OverflowError):  # not a number, or not a finite one
+        count = 0
+    if count < 1:
         raise ValueError(
             f"orders = {orders!r} is a count of crossings and must be a whole number from 1 upward"
         )
-    hit = hole.trace_rays(x, y, checked_inclination(inclination), int(orders), azimuth, delay, momentum)
-    return _first_ray(hit) if scalar else hit
+    return count
 
 
 def _first_ray(hit: Hit) -> Hit:

@@ -60,6 +60,27 @@ def test_a_shadow_needs_an_observer_who_can_stand_still():
 def test_a_deflection_needs_a_finite_impact_parameter():
     with pytest.raises(ValueError, match="not finite"):
         rt.deflection([6.0, math.nan])
+    with pytest.raises(ValueError, match=r"beyond 1e\+150 M"):
+        rt.deflection(1e200)
+
+
+@pytest.mark.parametrize("position", [(1e200, 0.0), (0.0, -1e160), (math.inf, 0.0)])
+def test_a_ray_too_far_out_to_square_its_distance_is_refused_instead_of_called_escaped(position):
+    with pytest.raises(ValueError, match=r"not finite or lies beyond 1e\+150 M"):
+        rt.trace(*position, inclination=0.5)
+
+
+@pytest.mark.parametrize("orders", ["three", math.nan, math.inf, None])
+def test_a_count_of_orders_is_a_number(orders):
+    with pytest.raises(ValueError, match="is a count of crossings and must be a whole number"):
+        rt.trace(3.0, 4.0, inclination=0.5, orders=orders)
+
+
+def test_a_ray_far_out_is_straight_and_deflected_by_four_over_b():
+    hit = rt.trace(1e100, 0.0, inclination=0.5, orders=2)
+    assert hit.radius[0] == pytest.approx(1e100, rel=1e-12)
+    assert hit.status.tolist() == [rt.RayStatus.CROSSED, rt.RayStatus.ESCAPED]
+    assert rt.deflection(1e100) * 1e100 == pytest.approx(4.0, rel=1e-12)
 
 
 @pytest.mark.parametrize(

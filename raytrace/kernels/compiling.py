@@ -69,7 +69,7 @@ def kernel(*, parallel: bool = False, inline: bool = False) -> Callable[[Callabl
         Spread `numba.prange` loops over the cores that numba was given.
     inline : bool
         Oblige LLVM to inline the function into its callers, which lets their loops vectorise. Copying it in numba's own
-        representation does so too, but types every copy anew: six per cent faster to run, two seconds longer to compile.
+        representation does so too, but types every copy anew: six per cent faster to run, 1.5 s longer to compile.
     """
 
     def compile_(function: Callable[..., Any]) -> Any:

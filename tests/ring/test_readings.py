@@ -56,7 +56,7 @@ def test_a_change_of_outcome_is_placed_closely(table):
 
 
 def test_the_ring_is_lost_where_its_total_width_fills_it(image):
-    """The central minimum of a blurred thin ring vanishes (CHK) at 0.83255 of the diameter, here of a smaller ring that the table reaches."""
+    """The central minimum of a blurred thin ring vanishes at 0.83255 of its diameter (CHK), here of a smaller ring."""
     small = readings(averaged_ring(128, 0.2, 6.0, INNATE, parts=3), 0.2)
     assert np.hypot(lost(small), INNATE) / 6.0 == pytest.approx(0.83255, abs=0.02)
 

@@ -8,8 +8,10 @@ from __future__ import annotations
 
 import json
 import math
+from fractions import Fraction
 from pathlib import Path
 
+import mpmath as mp
 import numpy as np
 import pytest
 from hypothesis import given
@@ -21,6 +23,7 @@ ROWS = json.loads((Path(__file__).parent.parent / "oracles" / "crossings.json").
 EPSILON = float(np.finfo(np.float64).eps)
 RADIUS_FLOOR, ROUNDINGS = 1e-12, 8.0
 DELAY_TOLERANCE = 1e-9
+DEFLECTION_TOLERANCE = 1e-9
 
 
 # Radii alone come from other kernels than radii with anything beside them.
@@ -57,6 +60,39 @@ def test_delays_agree_to_one_part_in_a_thousand_million():
         for order, delay in enumerate(row["delay"]):
             exact = float(delay)
             assert abs(hit.delay[order] - exact) <= DELAY_TOLERANCE * max(1.0, abs(exact)), (row, order)
+
+
+@BOTH_KERNELS
+def test_fates_are_exact_to_the_last_bit_of_the_screen_position(asked):
+    # α² + β² against 27 in rational arithmetic: in floating point about one in twelve of these rays changes its fate.
+    random = np.random.default_rng(7)
+    b = math.sqrt(27.0) * (1.0 + random.choice([-1, 1], 2000) * 10.0 ** random.uniform(-17, -14, 2000))
+    angle = random.uniform(-math.pi, math.pi, b.size)
+    alpha, beta = b * np.cos(angle), b * np.sin(angle)
+    hit = rt.trace(alpha, beta, inclination=0.7, orders=1, **asked)
+    escapes = [Fraction(x) ** 2 + Fraction(y) ** 2 > 27 for x, y in zip(alpha, beta, strict=True)]
+    np.testing.assert_array_equal(hit.fate == rt.RayStatus.ESCAPED, escapes)
+
+
+def exact_deflection(b: float) -> float:
+    """4 [K − F]/√(2 (u3 − u1)) − π in 40 digits, from the closest approach found by bisection."""
+    with mp.workdps(40):
+        square = mp.mpf(b) ** 2
+        low, high = mp.mpf(0), mp.mpf(1) / 3
+        for _ in range(135):
+            middle = (low + high) / 2
+            low, high = (middle, high) if 1 / square > middle**2 - 2 * middle**3 else (low, middle)
+        root = mp.sqrt((1 - 2 * low) * (1 + 6 * low))
+        u1, u3 = (1 - 2 * low - root) / 4, (1 - 2 * low + root) / 4
+        m = (low - u1) / (u3 - u1)
+        start = mp.ellipf(mp.asin(mp.sqrt(-u1 / (low - u1))), m)
+        return float(4 * (mp.ellipk(m) - start) / mp.sqrt(2 * (u3 - u1)) - mp.pi)
+
+
+def test_deflections_agree_from_the_critical_curve_to_far_away():
+    for offset in np.geomspace(1e-14, 1e6, 81):
+        b = math.sqrt(27.0) * (1.0 + offset)
+        assert rt.deflection(b) == pytest.approx(exact_deflection(b), rel=DEFLECTION_TOLERANCE), b
 
 
 @given(

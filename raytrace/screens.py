@@ -1,96 +1,31 @@
 """A screen that follows the light: samples and weights between the images of an emitter's edges, order by order.
 
-At every screen angle the band of order n is cut into panels whose edges lie on the images of chosen
-circles, the emitter's own edges and the critical curve's r = r_photon among them; inside a panel
-Gauss–Legendre nodes, around the screen equally spaced angles, so that both directions converge spectrally
-for light that is smooth between the edges. G = c = M = 1; angles in radians; weights are areas on the
-screen [M²].
+The bands and panels are those of `raytrace.panels`; nodes and angles are doubled until light as steep as r⁻³
+is represented to the tolerance asked for, and what was reached is told per order. It starts from the critical
+curve of the spacetime that it is given and knows no metric. G = c = M = 1; angles in radians; weights are areas
+on the screen [M²].
 """
 
 from __future__ import annotations
 
 import math
 from collections.abc import Sequence
-from dataclasses import dataclass, replace
-from functools import cache
-from itertools import pairwise
+from dataclasses import dataclass
 
 import numpy as np
-from numpy.polynomial import legendre
-from numpy.typing import NDArray
+from numpy.typing import ArrayLike, NDArray
 
 from raytrace.contract import Array, Spacetime
-from raytrace.isoradials import checked_inclination, isoradial
+from raytrace.isoradials import checked_inclination
+from raytrace.panels import Band, band, panel_radii
 from raytrace.registry import or_default
+from raytrace.series import BandSeries
 
-# Neighbouring panel edges differ by at most this factor in radius: a power law then needs few nodes.
-PANEL_RATIO = 1.7
-NODES = 12
-FEWEST_ANGLES = 32
+FEWEST_ANGLES = 16
 MOST_ANGLES = 2048
 MOST_NODES = 48
 # The brightness on which the screen is judged: as steep as emission near the hole usually is.
 TEST_SLOPE = 3.0
-# Coefficients at the end of a spectral series that are taken as its tail.
-TAIL_SHARE = 0.8
-
-
-@dataclass(frozen=True)
-class Band:
-    """The part of the screen where one order of an emitter can appear, cut into panels.
-
-    Attributes
-    ----------
-    order : int
-    radii : array (panels + 1,)
-        Circles whose images are the panel edges [M].
-    angles : array (n_angles,)
-        Equally spaced screen angles, half a step off 0 [rad].
-    edges : array (panels + 1, n_angles)
-        Images of the circles [M].
-    nodes, node_weights : arrays (q,)
-        Gauss–Legendre rule on (−1, 1).
-    """
-
-    order: int
-    radii: Array
-    angles: Array
-    edges: Array
-    nodes: Array
-    node_weights: Array
-
-    @property
-    def shape(self) -> tuple[int, int, int]:
-        """(panels, q, n_angles): the shape of everything sampled on the band."""
-        return len(self.radii) - 1, len(self.nodes), len(self.angles)
-
-    @property
-    def distance(self) -> Array:
-        """Distance of every sample from the screen's origin [M], shape (panels, q, n_angles)."""
-        low, high = self.edges[:-1, None, :], self.edges[1:, None, :]
-        return 0.5 * (high + low) + 0.5 * (high - low) * self.nodes[None, :, None]
-
-    @property
-    def weight(self) -> Array:
-        """Area on the screen that every sample stands for [M²], shape (panels, q, n_angles)."""
-        half_width = 0.5 * (self.edges[1:, None, :] - self.edges[:-1, None, :])
-        step = 2.0 * math.pi / len(self.angles)
-        return self.distance * half_width * self.node_weights[None, :, None] * step
-
-    def with_nodes(self, count: int) -> Band:
-        """The same panels with another number of nodes in each."""
-        points, weights = gauss_legendre(count)
-        return replace(self, nodes=points, node_weights=weights)
-
-    @property
-    def alpha(self) -> Array:
-        """Screen coordinate α of every sample [M]."""
-        return self.distance * np.cos(self.angles)
-
-    @property
-    def beta(self) -> Array:
-        """Screen coordinate β of every sample [M]."""
-        return self.distance * np.sin(self.angles)
 
 
 @dataclass(frozen=True)
@@ -104,7 +39,8 @@ class Screen:
     order : int array (n,)
         The order that each sample belongs to.
     error : array (orders,)
-        Estimated relative error of ∫ r⁻³ dα dβ over each order's band.
+        Estimated error of each order: of the interpolated test brightness r⁻³ relative to its largest value,
+        and of its integral over the band relative to the integral.
     bands : tuple of Band
         The same samples with their structure, one per order.
     """
@@ -115,6 +51,36 @@ class Screen:
     order: NDArray[np.int64]
     error: Array
     bands: tuple[Band, ...]
+
+    def interpolate(self, values: ArrayLike) -> tuple[BandSeries, ...]:
+        """Smooth interpolants of something known at the samples, one per order.
+
+        Parameters
+        ----------
+        values : array_like (n,)
+            At the samples, in their order.
+
+        Returns
+        -------
+        tuple of BandSeries
+            Functions of distance from the origin [M] and screen angle [rad]; 0 outside their bands.
+
+        Raises
+        ------
+        ValueError
+            If there are not as many values as samples.
+        """
+        sampled = np.asarray(values, dtype=np.float64)
+        if sampled.shape != self.alpha.shape:
+            raise ValueError(
+                f"values of shape {sampled.shape} do not fit the screen's {self.alpha.size} samples; give one each"
+            )
+        ends = np.cumsum([math.prod(each.shape) for each in self.bands])
+        pieces = np.split(sampled, ends[:-1])
+        return tuple(
+            BandSeries.of(each, piece.reshape(each.shape))
+            for each, piece in zip(self.bands, pieces, strict=True)
+        )
 
 
 def screen(
@@ -137,7 +103,8 @@ def screen(
     orders : int
         How many orders, from n = 0.
     tolerance : float
-        Relative error allowed for light as steep as r⁻³.
+        Error allowed for light as steep as r⁻³: of its interpolant relative to the brightest point of each
+        order, and of each order's integral relative to the integral.
     spacetime : Spacetime, optional
         Schwarzschild unless given.
 
@@ -170,107 +137,6 @@ def screen(
     )
 
 
-def panel_radii(edges: Sequence[float], spacetime: Spacetime) -> Array:
-    """Radii of the panel edges: the emitter's own, the photon orbit, and enough between for a steep power
-    law.
-    """
-    own = np.asarray(edges, dtype=np.float64)
-    if own.ndim != 1 or own.size < 2 or not np.all(np.diff(own) > 0.0) or not np.all(np.isfinite(own)):
-        raise ValueError(
-            f"the emitter's edges {list(edges)} must be at least two finite radii [M] that ascend"
-        )
-    if own[0] < spacetime.horizon:
-        raise ValueError(
-            f"the emitter's inner edge {own[0]:g} M lies inside the horizon at {spacetime.horizon:g} M"
-        )
-    inside = own[0] < spacetime.photon_orbit < own[-1]
-    corners = np.union1d(own, [spacetime.photon_orbit] if inside else [])
-    pieces = [
-        np.geomspace(low, high, 1 + math.ceil(math.log(high / low) / math.log(PANEL_RATIO)))[:-1]
-        for low, high in pairwise(corners)
-    ]
-    return np.concatenate([*pieces, own[-1:]])
-
-
-def band(
-    radii: Array,
-    *,
-    order: int,
-    inclination: float,
-    angles: int,
-    nodes: int = NODES,
-    spacetime: Spacetime | None = None,
-) -> Band:
-    """The band of one order with a given number of angles and of nodes per panel.
-
-    Parameters
-    ----------
-    radii : array (panels + 1,)
-        Ascending radii of the panel edges [M].
-    order, angles, nodes : int
-        Order of the image, number of screen angles, Gauss–Legendre nodes per panel.
-    inclination : float
-        [rad]
-    spacetime : Spacetime, optional
-        Schwarzschild unless given.
-    """
-    steps = (np.arange(angles, dtype=np.float64) + 0.5) * (2.0 * math.pi / angles)
-    images = isoradial(
-        radii[:, None], order=order, angle=steps[None, :], inclination=inclination, spacetime=spacetime
-    )
-    points, weights = gauss_legendre(nodes)
-    return Band(order, radii, steps, np.asarray(images), points, weights)
-
-
-@cache
-def gauss_legendre(count: int) -> tuple[Array, Array]:
-    """Nodes and weights of the Gauss–Legendre rule on (−1, 1)."""
-    points, weights = legendre.leggauss(count)
-    return points, weights
-
-
-@cache
-def legendre_transform(count: int) -> Array:
-    """Matrix (count, count) from values at the Gauss–Legendre nodes to Legendre coefficients."""
-    points, weights = gauss_legendre(count)
-    degree = np.arange(count)
-    return (degree[:, None] + 0.5) * legendre.legvander(points, count - 1).T * weights
-
-
-def tails(sampled: Band, values: Array) -> tuple[float, float]:
-    """How much of a band's samples is left at the end of their series, across panels and around the screen.
-
-    Parameters
-    ----------
-    sampled : Band
-    values : array (panels, q, n_angles)
-        Brightness at the band's samples.
-
-    Returns
-    -------
-    (float, float)
-        Largest coefficient in the tail of the Legendre and of the Fourier series, relative to the largest value; around
-        the screen also what the tail holds of the flux per angle, relative to the flux.
-    """
-    scale = float(np.max(np.abs(values))) or 1.0
-    across = np.einsum("mq,pqj->pmj", legendre_transform(values.shape[1]), values)
-    around = _end_of_series(values) / values.shape[2]
-    flux = np.sum(sampled.weight * values, axis=(0, 1))
-    return (
-        float(np.max(np.abs(across[:, -2:]))) / scale,
-        max(
-            float(np.max(around)) / scale,
-            2.0 * float(np.sum(_end_of_series(flux))) / (abs(float(flux.sum())) or 1.0),
-        ),
-    )
-
-
-def _end_of_series(values: Array) -> Array:
-    """Sizes of the last Fourier coefficients along the last axis."""
-    sizes: Array = np.abs(np.fft.rfft(values, axis=-1))
-    return sizes[..., int(TAIL_SHARE * sizes.shape[-1]) :]
-
-
 def _resolved(
     hole: Spacetime, radii: Array, order: int, inclination: float, tolerance: float
 ) -> tuple[Band, float]:
@@ -279,19 +145,19 @@ def _resolved(
     """
     sampled = band(radii, order=order, inclination=inclination, angles=FEWEST_ANGLES, spacetime=hole)
     while True:
-        across, around = tails(sampled, sampled_brightness(hole, sampled, inclination))
-        finer = refined(sampled, across, around, tolerance, inclination, hole)
+        series = BandSeries.of(sampled, _test_brightness(hole, sampled, inclination))
+        finer = refined(series, tolerance, inclination, hole)
         if finer is None:
-            return sampled, max(across, around)
+            return sampled, max(series.tails())
         sampled = finer
 
 
-def refined(
-    sampled: Band, across: float, around: float, tolerance: float, inclination: float, spacetime: Spacetime
-) -> Band | None:
-    """A band with twice the nodes or angles where a tail asks for it; None where none does or a limit is
-    reached.
+def refined(series: BandSeries, tolerance: float, inclination: float, spacetime: Spacetime) -> Band | None:
+    """A band with twice the nodes or angles where a tail of the series asks for it; None where none does or a
+    limit is reached.
     """
+    sampled = series.band
+    across, around = series.tails()
     nodes, angles = len(sampled.nodes), len(sampled.angles)
     if across > tolerance and nodes < MOST_NODES:
         nodes *= 2
@@ -307,7 +173,7 @@ def refined(
     return None if nodes == len(sampled.nodes) else sampled.with_nodes(nodes)
 
 
-def sampled_brightness(hole: Spacetime, sampled: Band, inclination: float) -> Array:
+def _test_brightness(hole: Spacetime, sampled: Band, inclination: float) -> Array:
     """The test brightness r⁻³ on a band, scaled to 1 at its inner edge; shape (panels, q, n_angles)."""
     hit = hole.trace_rays(
         sampled.alpha.ravel(), sampled.beta.ravel(), inclination, sampled.order + 1, False, False, False

@@ -1,0 +1,171 @@
+"""The band of the screen where one order of an emitter can appear, cut into panels that follow the light.
+
+At every screen angle panel edges lie on the images of chosen circles: the emitter's own edges, the innermost
+stable orbit, enough others for a steep power law, and for orders n ≥ 1 on the critical curve itself, which all
+those images approach by e^−π an order. Inside a panel stand Gauss–Legendre nodes, around the screen equally
+spaced angles, so that both directions converge spectrally for light that is smooth between the edges.
+G = c = M = 1; angles in radians; weights are areas on the screen [M²].
+"""
+
+from __future__ import annotations
+
+import math
+from collections.abc import Sequence
+from dataclasses import dataclass, replace
+from functools import cache
+from itertools import pairwise
+
+import numpy as np
+from numpy.polynomial import legendre
+
+from raytrace.contract import Array, Spacetime
+from raytrace.isoradials import isoradial
+from raytrace.registry import or_default
+
+# Neighbouring panel edges differ by at most this factor in radius: a power law then needs few nodes.
+PANEL_RATIO = 1.7
+NODES = 12
+
+
+@dataclass(frozen=True)
+class Band:
+    """The part of the screen where one order of an emitter can appear, cut into panels.
+
+    Attributes
+    ----------
+    order : int
+    radii : array (panels + 1,)
+        Circles whose images are the panel edges [M]. For orders n ≥ 1 the photon orbit stands for the critical
+        curve, to which its images shrink.
+    angles : array (n_angles,)
+        Equally spaced screen angles, half a step off 0 [rad].
+    edges : array (panels + 1, n_angles)
+        Distance of the panel edges from the screen's origin [M].
+    critical : array (n_angles,)
+        Distance of the critical curve [M].
+    nodes, node_weights : arrays (q,)
+        Gauss–Legendre rule on (−1, 1).
+    """
+
+    order: int
+    radii: Array
+    angles: Array
+    edges: Array
+    critical: Array
+    nodes: Array
+    node_weights: Array
+
+    @property
+    def shape(self) -> tuple[int, int, int]:
+        """(panels, q, n_angles): the shape of everything sampled on the band."""
+        return len(self.radii) - 1, len(self.nodes), len(self.angles)
+
+    @property
+    def distance(self) -> Array:
+        """Distance of every sample from the screen's origin [M], shape (panels, q, n_angles)."""
+        low, high = self.edges[:-1, None, :], self.edges[1:, None, :]
+        return 0.5 * (high + low) + 0.5 * (high - low) * self.nodes[None, :, None]
+
+    @property
+    def offset(self) -> Array:
+        """Distance of every sample from the critical curve, positive outside it [M]."""
+        return self.distance - self.critical
+
+    @property
+    def weight(self) -> Array:
+        """Area on the screen that every sample stands for [M²], shape (panels, q, n_angles)."""
+        half_width = 0.5 * (self.edges[1:, None, :] - self.edges[:-1, None, :])
+        step = 2.0 * math.pi / len(self.angles)
+        return self.distance * half_width * self.node_weights[None, :, None] * step
+
+    @property
+    def alpha(self) -> Array:
+        """Screen coordinate α of every sample [M]."""
+        return self.distance * np.cos(self.angles)
+
+    @property
+    def beta(self) -> Array:
+        """Screen coordinate β of every sample [M]."""
+        return self.distance * np.sin(self.angles)
+
+    def with_nodes(self, count: int) -> Band:
+        """The same panels with another number of nodes in each."""
+        points, weights = gauss_legendre(count)
+        return replace(self, nodes=points, node_weights=weights)
+
+
+def panel_radii(edges: Sequence[float], spacetime: Spacetime) -> Array:
+    """Radii of the panel edges: the emitter's own, the photon orbit, the innermost stable orbit, and enough
+    between for a steep power law.
+
+    Raises
+    ------
+    ValueError
+        If the edges are not at least two finite radii that ascend from the horizon outward.
+    """
+    own = np.asarray(edges, dtype=np.float64)
+    if own.ndim != 1 or own.size < 2 or not np.all(np.diff(own) > 0.0) or not np.all(np.isfinite(own)):
+        raise ValueError(
+            f"the emitter's edges {list(edges)} must be at least two finite radii [M] that ascend"
+        )
+    if own[0] < spacetime.horizon:
+        raise ValueError(
+            f"the emitter's inner edge {own[0]:g} M lies inside the horizon at {spacetime.horizon:g} M"
+        )
+    marks = [r for r in (spacetime.photon_orbit, spacetime.isco) if own[0] < r < own[-1]]
+    corners = np.union1d(own, marks)
+    pieces = [
+        np.geomspace(low, high, 1 + math.ceil(math.log(high / low) / math.log(PANEL_RATIO)))[:-1]
+        for low, high in pairwise(corners)
+    ]
+    return np.concatenate([*pieces, own[-1:]])
+
+
+def band(
+    radii: Array,
+    *,
+    order: int,
+    inclination: float,
+    angles: int,
+    nodes: int = NODES,
+    spacetime: Spacetime | None = None,
+) -> Band:
+    """The band of one order with a given number of angles and of nodes per panel.
+
+    Parameters
+    ----------
+    radii : array (panels + 1,)
+        Ascending radii of the panel edges [M], as `panel_radii` gives them.
+    order, angles, nodes : int
+        Order of the image, number of screen angles, Gauss–Legendre nodes per panel.
+    inclination : float
+        [rad]
+    spacetime : Spacetime, optional
+        Schwarzschild unless given.
+    """
+    hole = or_default(spacetime)
+    steps = (np.arange(angles, dtype=np.float64) + 0.5) * (2.0 * math.pi / angles)
+    images = np.array(
+        isoradial(radii[:, None], order=order, angle=steps[None, :], inclination=inclination, spacetime=hole)
+    )
+    critical = np.asarray(hole.critical_radius(inclination, steps))
+    if order > 0:
+        _put_edge_on(critical, images, radii == hole.photon_orbit)
+    points, weights = gauss_legendre(nodes)
+    return Band(order, radii, steps, images, critical, points, weights)
+
+
+def _put_edge_on(critical: Array, images: Array, at_photon_orbit: Array) -> None:
+    """Move the edge at the photon orbit's image to the critical curve, unless that would cross a neighbour:
+    the critical ray still meets the plane somewhat outside the photon orbit.
+    """
+    for edge in np.flatnonzero(at_photon_orbit[1:-1]) + 1:
+        if np.all((images[edge - 1] < critical) & (critical < images[edge + 1])):
+            images[edge] = critical
+
+
+@cache
+def gauss_legendre(count: int) -> tuple[Array, Array]:
+    """Nodes and weights of the Gauss–Legendre rule on (−1, 1)."""
+    points, weights = legendre.leggauss(count)
+    return points, weights

@@ -1,0 +1,148 @@
+"""What was sampled on a band, everywhere: Legendre series across its panels, trigonometric series around the screen.
+
+Between its panels' edges light is smooth, so some ten samples across and some dozens around carry it to nearly
+the accuracy of the samples; whatever needs many points (a cut, a pixel, a Fourier integral) asks the series and
+traces no ray. G = c = M = 1; angles in radians.
+"""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+from functools import cache
+
+import numpy as np
+from numpy.polynomial import legendre
+from numpy.typing import ArrayLike, NDArray
+
+from raytrace.contract import Array
+from raytrace.panels import Band, gauss_legendre
+
+# Coefficients at the end of a trigonometric series that are taken as its tail.
+TAIL_SHARE = 0.8
+# Legendre coefficients at the end of a panel's series that are taken as its tail.
+TAIL_TERMS = 2
+
+
+@dataclass(frozen=True)
+class BandSeries:
+    """A quantity on one band as a function of distance and screen angle.
+
+    Attributes
+    ----------
+    band : Band
+    coefficients : array (panels, m, n_angles)
+        Legendre coefficients across each panel, at the band's angles.
+    """
+
+    band: Band
+    coefficients: Array
+
+    @classmethod
+    def of(cls, sampled: Band, values: Array) -> BandSeries:
+        """The series through values at a band's samples, shape (panels, q, n_angles)."""
+        transform = legendre_transform(len(sampled.nodes))
+        return cls(sampled, np.einsum("mq,pqj->pmj", transform, values))
+
+    @property
+    def values(self) -> Array:
+        """The quantity at the band's samples, shape (panels, q, n_angles)."""
+        rows = legendre.legvander(self.band.nodes, self.coefficients.shape[1] - 1)
+        return np.einsum("qm,pmj->pqj", rows, self.coefficients)
+
+    def at_angles(self, angle: ArrayLike) -> tuple[Array, Array]:
+        """Panel edges and coefficients at any screen angles.
+
+        Parameters
+        ----------
+        angle : array_like (n,)
+            [rad]
+
+        Returns
+        -------
+        edges : array (panels + 1, n)
+            [M]
+        coefficients : array (panels, m, n)
+        """
+        weights = trigonometric_weights(len(self.band.angles), np.asarray(angle, dtype=np.float64))
+        return self.band.edges @ weights, self.coefficients @ weights
+
+    def __call__(self, distance: ArrayLike, angle: ArrayLike) -> Array:
+        """The quantity at a distance from the screen's origin [M] and a screen angle [rad]; 0 outside the
+        band. Broadcast.
+        """
+        b, phi = np.broadcast_arrays(
+            np.asarray(distance, dtype=np.float64), np.asarray(angle, dtype=np.float64)
+        )
+        flat = b.ravel()
+        edges, coefficients = self.at_angles(phi.ravel())
+        panel = np.clip(np.sum(flat >= edges[:-1], axis=0) - 1, 0, edges.shape[0] - 2)
+        index = np.arange(flat.size)
+        low, high = edges[panel, index], edges[panel + 1, index]
+        inside = (flat >= edges[0]) & (flat <= edges[-1])
+        x = np.where(inside, (2.0 * flat - low - high) / (high - low), 0.0)
+        value = legendre.legval(x, coefficients[panel, :, index].T, tensor=False)
+        return np.where(inside, value, 0.0).reshape(b.shape)
+
+    def flux(self) -> float:
+        """∫ over the band [the quantity's unit times M²]."""
+        return float(np.sum(self.band.weight * self.values))
+
+    def tails(self) -> tuple[float, float]:
+        """How much is left at the end of the series, across panels and around the screen.
+
+        Returns
+        -------
+        (float, float)
+            Largest coefficient in the tail of the Legendre and of the trigonometric series, relative to the
+            largest value; around the screen also what the tail holds of the flux per angle, relative to the
+            flux.
+        """
+        values = self.values
+        scale = float(np.max(np.abs(values))) or 1.0
+        around = end_of_series(values) / values.shape[2]
+        flux = np.sum(self.band.weight * values, axis=(0, 1))
+        return (
+            float(np.max(np.abs(self.coefficients[:, -TAIL_TERMS:]))) / scale,
+            max(
+                float(np.max(around)) / scale,
+                2.0 * float(np.sum(end_of_series(flux))) / (abs(float(flux.sum())) or 1.0),
+            ),
+        )
+
+
+@cache
+def legendre_transform(count: int) -> Array:
+    """Matrix (count, count) from values at the Gauss–Legendre nodes to Legendre coefficients."""
+    points, weights = gauss_legendre(count)
+    degree = np.arange(count)
+    return (degree[:, None] + 0.5) * legendre.legvander(points, count - 1).T * weights
+
+
+def trigonometric_weights(count: int, angle: Array) -> Array:
+    """Matrix (count, n) that interpolates values at equally spaced angles, half a step off 0, to any angles.
+
+    The kernel is Dirichlet's for an even number of samples, sin(Nδ/2) cot(δ/2) / N (any text on Fourier series).
+    """
+    step = 2.0 * np.pi / count
+    half = 0.5 * (angle[None, :] - (np.arange(count)[:, None] + 0.5) * step)
+    sine = np.sin(half)
+    at_sample = np.abs(sine) < np.finfo(np.float64).eps
+    with np.errstate(divide="ignore", invalid="ignore"):
+        weights = np.sin(count * half) * np.cos(half) / (count * sine)
+    return np.where(at_sample, 1.0, weights)
+
+
+def equally_spaced(rows: Array, count: int) -> Array:
+    """Trigonometric interpolation of the last axis, half a step off angle 0, to `count` angles from 0."""
+    sampled = rows.shape[-1]
+    spectrum: NDArray[np.complex128] = np.fft.rfft(rows, axis=-1)
+    shift = np.exp(-1j * np.arange(spectrum.shape[-1]) * np.pi / sampled)
+    if sampled % 2 == 0:
+        spectrum[..., -1] *= 0.5
+    return np.fft.irfft(spectrum * shift, n=count, axis=-1) * (count / sampled)
+
+
+def end_of_series(values: Array) -> Array:
+    """Sizes of the last Fourier coefficients along the last axis."""
+    sizes: Array = np.abs(np.fft.rfft(values, axis=-1))
+    return sizes[..., int(TAIL_SHARE * sizes.shape[-1]) :]

@@ -1,0 +1,145 @@
+"""The light of a scene on the screen, sampled where it has structure: every emitter's every order as one band.
+
+Each band is sampled where `raytrace.panels` puts its nodes and shaded there; angles and nodes are doubled until
+the tail of the brightness's own series is below the accuracy asked for. Lengths in M, brightness in the
+emitters' own unit times their strength; fluxes are ∫ I dα dβ in that unit times M².
+"""
+
+from __future__ import annotations
+
+import math
+from dataclasses import dataclass
+from typing import TYPE_CHECKING
+
+import numpy as np
+
+import emission as em
+import raytrace as rt
+from raytrace.contract import Array, Hit
+from raytrace.panels import NODES, Band, band, gauss_legendre, panel_radii
+from raytrace.screens import FEWEST_ANGLES, refined
+from raytrace.series import BandSeries
+
+if TYPE_CHECKING:
+    from ringwright.scenes import Scene
+
+# A backdrop reaches this much beyond the corner of the field.
+BEYOND_CORNER = 1.05
+
+
+@dataclass(frozen=True)
+class SampledLight:
+    """One order of one emitter.
+
+    Attributes
+    ----------
+    order : int
+    series : BandSeries
+        Brightness, before anything opaque in front hides it.
+    fronts : tuple of arrays (2, n)
+        Inner and outer edge of each opaque crossing in front, at equally spaced screen angles, half a step
+        off 0 [M].
+    error : float
+        Estimated error of the interpolated brightness relative to its largest value, and of the flux relative
+        to the flux.
+    boundless : bool
+        Whether this is light from infinity, which ends only where the field does.
+    """
+
+    order: int
+    series: BandSeries
+    fronts: tuple[Array, ...]
+    error: float
+    boundless: bool = False
+
+
+def sample_light(scene: Scene, *, accuracy: float) -> tuple[SampledLight, ...]:
+    """Sample and shade every order of every emitter of a scene.
+
+    Parameters
+    ----------
+    scene : Scene
+    accuracy : float
+        Largest interpolation error allowed, relative to the brightest point of each order.
+
+    Returns
+    -------
+    tuple of SampledLight
+        Emitter by emitter, order by order; its `error` says what was reached.
+    """
+    found: list[SampledLight] = []
+    for strength, emitter in scene.emitters:
+        if emitter.edges:
+            found += _orders(scene, strength, emitter, accuracy)
+        else:
+            found.append(_sky(scene, strength, emitter))
+    return tuple(found)
+
+
+def _orders(
+    scene: Scene, strength: float, emitter: em.contract.Emitter, accuracy: float
+) -> list[SampledLight]:
+    radii = panel_radii(emitter.edges, scene.spacetime)
+    found: list[SampledLight] = []
+    fronts: list[Array] = []
+    for order in range(scene.orders):
+        series = _resolved(scene, strength, emitter, radii, order, accuracy)
+        found.append(
+            SampledLight(order, series, tuple(fronts) if emitter.opaque else (), max(series.tails()))
+        )
+        fronts.append(series.band.edges[[0, -1]])
+    return found
+
+
+def _resolved(
+    scene: Scene,
+    strength: float,
+    emitter: em.contract.Emitter,
+    radii: Array,
+    order: int,
+    accuracy: float,
+) -> BandSeries:
+    """Double angles or nodes until the tails of the brightness are below the accuracy or a limit is
+    reached.
+    """
+    sampled = band(
+        radii, order=order, inclination=scene.inclination, angles=FEWEST_ANGLES, spacetime=scene.spacetime
+    )
+    while True:
+        series = BandSeries.of(sampled, strength * _brightness(scene, emitter, sampled))
+        finer = refined(series, accuracy, scene.inclination, scene.spacetime)
+        if finer is None:
+            return series
+        sampled = finer
+
+
+def _brightness(scene: Scene, emitter: em.contract.Emitter, sampled: Band) -> Array:
+    hit = rt.trace(
+        sampled.alpha.ravel(),
+        sampled.beta.ravel(),
+        inclination=scene.inclination,
+        orders=sampled.order + 1,
+        spacetime=scene.spacetime,
+        azimuth=False,
+        delay=False,
+    )
+    return shaded(scene, emitter, hit.only(sampled.order)).reshape(sampled.shape)
+
+
+def shaded(scene: Scene, emitter: em.contract.Emitter, hit: Hit) -> Array:
+    """Total intensity of an emitter at crossings that are known: array of the shape of one Stokes plane."""
+    frequency = None if scene.frequency is None else float(scene.frequency.to_value("Hz"))
+    return em.shade(emitter, hit, spacetime=scene.spacetime, frequency=frequency)[0]
+
+
+def _sky(scene: Scene, strength: float, emitter: em.contract.Emitter) -> SampledLight:
+    """Light from infinity: everything outside the critical curve, to beyond the corner of the field."""
+    angles = (np.arange(FEWEST_ANGLES, dtype=np.float64) + 0.5) * (2.0 * math.pi / FEWEST_ANGLES)
+    critical = np.asarray(
+        rt.critical_curve(spacetime=scene.spacetime, inclination=scene.inclination, angle=angles)
+    )
+    outer = np.full_like(critical, BEYOND_CORNER * max(scene.field_m, 4.0 * float(np.max(critical))))
+    points, weights = gauss_legendre(NODES)
+    sky = Band(0, np.array([0.0, 1.0]), angles, np.stack([critical, outer]), critical, points, weights)
+    series = BandSeries.of(sky, strength * _brightness(scene, emitter, sky))
+    return SampledLight(0, series, (), 0.0, boundless=True)

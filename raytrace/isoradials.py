@@ -20,6 +20,9 @@ from raytrace.roots import bracketed_roots
 # b ≈ r + 1.
 BRACKET_GROWTH = 1.25
 BRACKET_OFFSET = 12.0
+# An order that still appears this far from the origin [M] appears without limit: the direct one always, the others
+# edge-on where the plane's far half starts.
+FARTHEST_LIMIT = 1e8
 # A ray this close to the origin falls in as the radial one does, which has no screen angle and edge-on lies in the plane.
 NEARLY_RADIAL = 1e-12
 
@@ -67,7 +70,8 @@ def isoradial(
     Parameters
     ----------
     radius : array_like
-        Radius of the circle [M], at or outside the horizon. Broadcast against `angle`.
+        Radius of the circle [M], at or outside the horizon; infinite for the farthest that an order n ≥ 1 can
+        appear. Broadcast against `angle`.
     order : int
         n = 0, 1, 2, …: how many half turns more than the direct image.
     angle : array_like
@@ -80,7 +84,8 @@ def isoradial(
     Returns
     -------
     array or float
-        b [M]; NaN where this order has no image at this angle (a ray within the equatorial plane).
+        b [M]; NaN where this order has no image at this angle (a ray within the equatorial plane); infinite
+        where there is no limit.
 
     Raises
     ------
@@ -114,16 +119,21 @@ def checked_inclination(inclination: float) -> float:
 
 
 def _solve(hole: Spacetime, radii: Array, angles: Array, inclination: float, order: int) -> Array:
+    unlimited = np.isinf(radii)
     target = 1.0 / radii
 
     def mismatch(b: Array, index: NDArray[np.int64]) -> Array:
         hit = hole.trace_rays(
             b * np.cos(angles[index]), b * np.sin(angles[index]), inclination, order + 1, False, False, False
         )
-        return _monotone(hit.radius[order], hit.status[order], hole.horizon) - target[index]
+        value = _monotone(hit.radius[order], hit.status[order], hole.horizon) - target[index]
+        # Where an order ends toward infinity 1/r only touches 0; what lies beyond must have the other sign.
+        value[unlimited[index] & (hit.status[order] == RayStatus.ESCAPED)] = -1.0
+        return value
 
-    far = BRACKET_GROWTH * radii + BRACKET_OFFSET
-    return bracketed_roots(mismatch, np.full_like(radii, NEARLY_RADIAL), far)
+    far = np.where(unlimited, FARTHEST_LIMIT, BRACKET_GROWTH * radii + BRACKET_OFFSET)
+    found = bracketed_roots(mismatch, np.full_like(radii, NEARLY_RADIAL), far)
+    return np.where(unlimited & np.isnan(found), np.inf, found)
 
 
 def _monotone(radius: Array, status: NDArray[np.int8], horizon: float) -> Array:

@@ -10,13 +10,14 @@ G = c = M = 1; angles in radians; weights are areas on the screen [M²].
 from __future__ import annotations
 
 import math
-from collections.abc import Sequence
+from collections.abc import Callable, Sequence
 from dataclasses import dataclass, replace
-from functools import cache
+from functools import cache, partial
 from itertools import pairwise
 
 import numpy as np
 from numpy.polynomial import legendre
+from numpy.typing import NDArray
 
 from raytrace.contract import Array, Spacetime
 from raytrace.isoradials import isoradial
@@ -39,10 +40,10 @@ class Band:
         curve, to which its images shrink.
     angles : array (n_angles,)
         Equally spaced screen angles, half a step off 0 [rad].
-    edges : array (panels + 1, n_angles)
-        Distance of the panel edges from the screen's origin [M].
-    critical : array (n_angles,)
-        Distance of the critical curve [M].
+    offsets : array (panels + 1, n_angles)
+        Distance of the panel edges from the critical curve, positive outside it [M].
+    curve : callable
+        Distance of the critical curve from the screen's origin [M] at any screen angles [rad].
     nodes, node_weights : arrays (q,)
         Gauss–Legendre rule on (−1, 1).
     """
@@ -50,8 +51,8 @@ class Band:
     order: int
     radii: Array
     angles: Array
-    edges: Array
-    critical: Array
+    offsets: Array
+    curve: Callable[[Array], Array]
     nodes: Array
     node_weights: Array
 
@@ -61,20 +62,30 @@ class Band:
         return len(self.radii) - 1, len(self.nodes), len(self.angles)
 
     @property
-    def distance(self) -> Array:
-        """Distance of every sample from the screen's origin [M], shape (panels, q, n_angles)."""
-        low, high = self.edges[:-1, None, :], self.edges[1:, None, :]
-        return 0.5 * (high + low) + 0.5 * (high - low) * self.nodes[None, :, None]
+    def edges(self) -> Array:
+        """Distance of the panel edges from the screen's origin [M], shape (panels + 1, n_angles)."""
+        return self.curve(self.angles) + self.offsets
+
+    @property
+    def widths(self) -> Array:
+        """From edge to edge of every panel [M], shape (panels, n_angles)."""
+        return np.diff(self.offsets, axis=0)
 
     @property
     def offset(self) -> Array:
-        """Distance of every sample from the critical curve, positive outside it [M]."""
-        return self.distance - self.critical
+        """Distance of every sample from the critical curve [M], shape (panels, q, n_angles)."""
+        low, high = self.offsets[:-1, None, :], self.offsets[1:, None, :]
+        return 0.5 * (high + low) + 0.5 * (high - low) * self.nodes[None, :, None]
+
+    @property
+    def distance(self) -> Array:
+        """Distance of every sample from the screen's origin [M], shape (panels, q, n_angles)."""
+        return self.curve(self.angles) + self.offset
 
     @property
     def weight(self) -> Array:
         """Area on the screen that every sample stands for [M²], shape (panels, q, n_angles)."""
-        half_width = 0.5 * (self.edges[1:, None, :] - self.edges[:-1, None, :])
+        half_width = 0.5 * self.widths[:, None, :]
         step = 2.0 * math.pi / len(self.angles)
         return self.distance * half_width * self.node_weights[None, :, None] * step
 
@@ -148,20 +159,21 @@ def band(
     images = np.array(
         isoradial(radii[:, None], order=order, angle=steps[None, :], inclination=inclination, spacetime=hole)
     )
-    critical = np.asarray(hole.critical_radius(inclination, steps))
+    curve = partial(hole.critical_radius, inclination)
+    offsets = images - curve(steps)
     if order > 0:
-        _put_edge_on(critical, images, radii == hole.photon_orbit)
+        _put_edge_on_critical_curve(offsets, radii == hole.photon_orbit)
     points, weights = gauss_legendre(nodes)
-    return Band(order, radii, steps, images, critical, points, weights)
+    return Band(order, radii, steps, offsets, curve, points, weights)
 
 
-def _put_edge_on(critical: Array, images: Array, at_photon_orbit: Array) -> None:
+def _put_edge_on_critical_curve(offsets: Array, at_photon_orbit: NDArray[np.bool_]) -> None:
     """Move the edge at the photon orbit's image to the critical curve, unless that would cross a neighbour:
     the critical ray still meets the plane somewhat outside the photon orbit.
     """
     for edge in np.flatnonzero(at_photon_orbit[1:-1]) + 1:
-        if np.all((images[edge - 1] < critical) & (critical < images[edge + 1])):
-            images[edge] = critical
+        if np.all((offsets[edge - 1] < 0.0) & (offsets[edge + 1] > 0.0)):
+            offsets[edge] = 0.0
 
 
 @cache

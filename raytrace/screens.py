@@ -148,7 +148,7 @@ def _resolved(
         series = BandSeries.of(sampled, _test_brightness(hole, sampled, inclination))
         finer = refined(series, tolerance, inclination, hole)
         if finer is None:
-            return sampled, max(series.tails())
+            return sampled, series.error()
         sampled = finer
 
 

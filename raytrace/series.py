@@ -9,6 +9,7 @@ from __future__ import annotations
 
 from dataclasses import dataclass
 from functools import cache
+from typing import Any
 
 import numpy as np
 from numpy.polynomial import legendre
@@ -17,8 +18,12 @@ from numpy.typing import ArrayLike, NDArray
 from raytrace.contract import Array
 from raytrace.panels import Band, gauss_legendre
 
-# Coefficients at the end of a trigonometric series that are taken as its tail.
-TAIL_SHARE = 0.8
+# Share of the coefficients of a trigonometric series that are taken as its tail, and the fewest: at the last of
+# all, half a step off angle 0, light that is even about the β axis cannot be seen, and at every other one an even ring.
+TAIL_SHARE = 0.1
+FEWEST_IN_TAIL = 3
+# Units in the last place by which a ray's distance from the origin, and what each angle adds to a sum, is known.
+ROUNDING = 32.0
 # Legendre coefficients at the end of a panel's series that are taken as its tail.
 TAIL_TERMS = 2
 
@@ -59,12 +64,12 @@ class BandSeries:
 
         Returns
         -------
-        edges : array (panels + 1, n)
-            [M]
+        offsets : array (panels + 1, n)
+            Panel edges as distances from the critical curve [M].
         coefficients : array (panels, m, n)
         """
         weights = trigonometric_weights(len(self.band.angles), np.asarray(angle, dtype=np.float64))
-        return self.band.edges @ weights, self.coefficients @ weights
+        return self.band.offsets @ weights, self.coefficients @ weights
 
     def __call__(self, distance: ArrayLike, angle: ArrayLike) -> Array:
         """The quantity at a distance from the screen's origin [M] and a screen angle [rad]; 0 outside the
@@ -73,13 +78,13 @@ class BandSeries:
         b, phi = np.broadcast_arrays(
             np.asarray(distance, dtype=np.float64), np.asarray(angle, dtype=np.float64)
         )
-        flat = b.ravel()
+        offset = (b - self.band.curve(phi)).ravel()
         edges, coefficients = self.at_angles(phi.ravel())
-        panel = np.clip(np.sum(flat >= edges[:-1], axis=0) - 1, 0, edges.shape[0] - 2)
-        index = np.arange(flat.size)
+        panel = np.clip(np.sum(offset >= edges[:-1], axis=0) - 1, 0, edges.shape[0] - 2)
+        index = np.arange(offset.size)
         low, high = edges[panel, index], edges[panel + 1, index]
-        inside = (flat >= edges[0]) & (flat <= edges[-1])
-        x = np.where(inside, (2.0 * flat - low - high) / (high - low), 0.0)
+        inside = (offset >= edges[0]) & (offset <= edges[-1])
+        x = np.where(inside, (2.0 * offset - low - high) / (high - low), 0.0)
         value = legendre.legval(x, coefficients[panel, :, index].T, tensor=False)
         return np.where(inside, value, 0.0).reshape(b.shape)
 
@@ -93,21 +98,37 @@ class BandSeries:
         Returns
         -------
         (float, float)
-            Largest coefficient in the tail of the Legendre and of the trigonometric series, relative to the
-            largest value; around the screen also what the tail holds of the flux per angle, relative to the
-            flux.
+            What the tail of the Legendre series holds, relative to the largest value; and the largest of three
+            things around the screen: what the tail of the trigonometric series holds, relative to the largest
+            value, the same for the flux per angle, relative to the flux, and what a shift of the panel edges
+            by the tail of theirs does to the quantity.
         """
         values = self.values
         scale = float(np.max(np.abs(values))) or 1.0
-        around = end_of_series(values) / values.shape[2]
         flux = np.sum(self.band.weight * values, axis=(0, 1))
         return (
-            float(np.max(np.abs(self.coefficients[:, -TAIL_TERMS:]))) / scale,
+            float(np.max(np.sum(np.abs(self.coefficients[:, -TAIL_TERMS:]), axis=1))) / scale,
             max(
-                float(np.max(around)) / scale,
-                2.0 * float(np.sum(end_of_series(flux))) / (abs(float(flux.sum())) or 1.0),
+                _tail(values) / scale,
+                len(flux) * _tail(flux[None, None]) / (abs(float(flux.sum())) or 1.0),
+                self._shift(_tail(self.band.offsets[:, None], each_row=True)) / scale,
             ),
         )
+
+    def error(self) -> float:
+        """Estimated error of the interpolant relative to the largest value: both tails, and what the rounding
+        of a ray's distance from the origin does in a narrow band.
+        """
+        scale = float(np.max(np.abs(self.values))) or 1.0
+        unit = ROUNDING * float(np.finfo(np.float64).eps)
+        moved = self._shift(unit * np.max(np.abs(self.band.edges), axis=1))
+        return sum(self.tails()) + moved / scale + unit * len(self.band.angles)
+
+    def _shift(self, moved: Array) -> float:
+        """Largest change of the quantity if each panel edge moves by a length (panels + 1,) [M]."""
+        values = self.values
+        ranges = np.max(values, axis=1) - np.min(values, axis=1)
+        return float(np.max((moved[1:] + moved[:-1])[:, None] * ranges / self.band.widths))
 
 
 @cache
@@ -142,7 +163,11 @@ def equally_spaced(rows: Array, count: int) -> Array:
     return np.fft.irfft(spectrum * shift, n=count, axis=-1) * (count / sampled)
 
 
-def end_of_series(values: Array) -> Array:
-    """Sizes of the last Fourier coefficients along the last axis."""
-    sizes: Array = np.abs(np.fft.rfft(values, axis=-1))
-    return sizes[..., int(TAIL_SHARE * sizes.shape[-1]) :]
+def _tail(rows: Array, each_row: bool = False) -> Any:
+    """What the last Fourier coefficients along the last axis hold together, largest over the second axis, and
+    over the first unless each row is asked for.
+    """
+    sizes = np.max(np.abs(np.fft.rfft(rows, axis=-1)), axis=1)
+    count = max(FEWEST_IN_TAIL, int(TAIL_SHARE * sizes.shape[-1]))
+    held = 2.0 * np.sum(sizes[:, -count:], axis=1) / rows.shape[-1]
+    return held if each_row else float(np.max(held))

@@ -9,6 +9,7 @@ from __future__ import annotations
 
 import math
 from dataclasses import dataclass
+from functools import partial
 from typing import TYPE_CHECKING
 
 import numpy as np
@@ -84,9 +85,7 @@ def _orders(
     fronts: list[Array] = []
     for order in range(scene.orders):
         series = _resolved(scene, strength, emitter, radii, order, accuracy)
-        found.append(
-            SampledLight(order, series, tuple(fronts) if emitter.opaque else (), max(series.tails()))
-        )
+        found.append(SampledLight(order, series, tuple(fronts) if emitter.opaque else (), series.error()))
         fronts.append(series.band.edges[[0, -1]])
     return found
 
@@ -135,11 +134,10 @@ def shaded(scene: Scene, emitter: em.contract.Emitter, hit: Hit) -> Array:
 def _sky(scene: Scene, strength: float, emitter: em.contract.Emitter) -> SampledLight:
     """Light from infinity: everything outside the critical curve, to beyond the corner of the field."""
     angles = (np.arange(FEWEST_ANGLES, dtype=np.float64) + 0.5) * (2.0 * math.pi / FEWEST_ANGLES)
-    critical = np.asarray(
-        rt.critical_curve(spacetime=scene.spacetime, inclination=scene.inclination, angle=angles)
-    )
-    outer = np.full_like(critical, BEYOND_CORNER * max(scene.field_m, 4.0 * float(np.max(critical))))
-    points, weights = gauss_legendre(NODES)
-    sky = Band(0, np.array([0.0, 1.0]), angles, np.stack([critical, outer]), critical, points, weights)
+    curve = partial(scene.spacetime.critical_radius, scene.inclination)
+    critical = curve(angles)
+    outer = BEYOND_CORNER * max(scene.field_m, 4.0 * float(np.max(critical)))
+    offsets = np.stack([np.zeros_like(critical), outer - critical])
+    sky = Band(0, np.array([0.0, 1.0]), angles, offsets, curve, *gauss_legendre(NODES))
     series = BandSeries.of(sky, strength * _brightness(scene, emitter, sky))
     return SampledLight(0, series, (), 0.0, boundless=True)

@@ -19,6 +19,7 @@ _HOMES = {
     "Ring": "ringwright.ring",
     "RingOutcome": "ringwright.ring",
     "measure": "ringwright.ring",
+    "visibility": "ringwright.visibilities",
     "ScanTable": "ringwright.scanning.table",
     "scan": "ringwright.scanning",
     "Comparison": "ringwright.comparing",

@@ -7,6 +7,7 @@ column 0 east; pixels and beams are in µas.
 
 from __future__ import annotations
 
+import math
 import re
 import warnings
 from collections.abc import Iterable
@@ -37,6 +38,8 @@ CHECKSUM_COMMENT = "of this header and data unit"
 
 _PER_PIXEL = re.compile(r"[mukMµ]?jy(/|)(pixel|pix|px)(-1)?")
 _PER_BEAM = re.compile(r"[mukMµ]?jy(/|)beam(-1)?")
+_FLUX = re.compile(r"([mukµ]?)jy/?(pixel|pix|px|beam|sr|arcsec|mas|uas)[-12]*", re.IGNORECASE)
+_PREFIXES = {"": 1.0, "m": 1e-3, "M": 1e6, "u": 1e-6, "U": 1e-6, "µ": 1e-6, "k": 1e3, "K": 1e3}
 _SURFACE = re.compile(r"([mukMµ]?jy(/|)(sr|arcsec2|mas2|uas2|arcsec-2|mas-2|uas-2|sr-1))|m?k")
 
 
@@ -58,6 +61,8 @@ class SkyImage:
         BUNIT as written, "" where the header has none.
     notes : tuple of str
         What was done to the data on the way in.
+    blank : int
+        How many pixels are blank.
     """
 
     name: str
@@ -67,6 +72,21 @@ class SkyImage:
     averaged: bool
     unit: str
     notes: tuple[str, ...]
+    blank: int = 0
+
+    @property
+    def jansky(self) -> float | None:
+        """What takes `data` to Jy per pixel; None for temperatures and where the header has no unit."""
+        found = _FLUX.fullmatch(_bare(self.unit))
+        if found is None:
+            return None
+        per, side = found[2].lower(), 1.0  # side of a pixel, in the angle whose square brightness is per
+        if per == "beam" and self.beam is not None:
+            fwhm = float(self.beam.to_value(self.pixel.unit))
+            side = float(self.pixel.value) / fwhm * math.sqrt(4.0 * math.log(2.0) / math.pi)
+        elif per in ("sr", "arcsec", "mas", "uas"):
+            side = float(self.pixel.to_value("rad" if per == "sr" else per))
+        return _PREFIXES[found[1]] * side**2
 
 
 def read_fits(path: str | Path) -> SkyImage:
@@ -85,9 +105,11 @@ def read_fits(path: str | Path) -> SkyImage:
     unit = str(header.get("BUNIT", "")).strip()
     beam = _beam(path, header, notes)
     per_beam = _check_unit(path, unit, beam is not None, notes)
+    blank = int(np.count_nonzero(~np.isfinite(data)))
     data = _filled(data, notes)
     angle = units.Quantity(pixel * UAS_PER_DEGREE, "uas")
-    return SkyImage(name, data, angle, beam, not (per_beam or beam is not None), unit, tuple(notes))
+    averaged = not (per_beam or beam is not None)
+    return SkyImage(name, data, angle, beam, averaged, unit, tuple(notes), blank)
 
 
 def _first_sky_image(path: Path) -> tuple[str, fits.Header, NDArray[Any]]:
@@ -192,7 +214,7 @@ def _beam(path: str | Path, header: fits.Header, notes: list[str]) -> units.Quan
 
 def _check_unit(path: str | Path, unit: str, has_beam: bool, notes: list[str]) -> bool:
     """Whether brightness is per beam; refuses what is no brightness."""
-    plain = re.sub(r"[\s.*^()]", "", unit).lower()
+    plain = _bare(unit).lower()
     if not plain:
         notes.append("the header has no BUNIT: values are read as brightness, in a unit unknown")
         return False
@@ -208,6 +230,10 @@ def _check_unit(path: str | Path, unit: str, has_beam: bool, notes: list[str]) -
             "Jy/pixel, Jy/beam, Jy/sr, Jy/arcsec2 and K"
         )
     return False
+
+
+def _bare(unit: str) -> str:
+    return re.sub(r"[\s.*^()]", "", unit)
 
 
 def _filled(data: Array, notes: list[str]) -> Array:

@@ -1,8 +1,9 @@
-"""Quantities as people write them in files: a number and a unit, parsed by astropy, with one unit of our own.
+"""Quantities as people write them: a number and a unit, parsed by astropy, with two units of our own.
 
-`M` is the length GM/c² of the hole at hand. A bare number where a unit is due is refused with the fix, and so are names that
-astropy reads as something else than was meant: `rg` (rontograms) and `mpc` (milliparsecs). The solar mass
-parameter is the IAU 2015 nominal value (resolution B3).
+`M` is the length GM/c² of the hole at hand, `lambda` (λ) the observing wavelength that baselines are counted in. A
+bare number where a unit is due is refused with the fix, and so are names that astropy reads as something else
+than was meant: `rg` (rontograms) and `mpc` (milliparsecs). The solar mass parameter is the IAU 2015 nominal
+value (resolution B3).
 """
 
 from __future__ import annotations
@@ -14,12 +15,18 @@ from functools import lru_cache
 
 import numpy as np
 from astropy import units as u
+from numpy.typing import NDArray
 
 GM_SUN = 1.3271244e20 * u.m**3 / u.s**2
 SPEED_OF_LIGHT = 299_792_458.0 * u.m / u.s  # exact in the SI
 THETA_G_OF_SUN = float((GM_SUN / SPEED_OF_LIGHT**2 / u.Mpc).to_value("")) * u.rad.to(
     "uas"
 )  # µas for 1 M☉ at 1 Mpc
+
+# Not a plain number, so that a baseline without a unit is seen; `GLAMBDA` is for arrays of them in notebooks.
+LAMBDA = u.def_unit("lambda", doc="one observing wavelength, as a length of baselines")
+GLAMBDA = u.def_unit("Glambda", 1e9 * LAMBDA, format={"unicode": "Gλ", "latex": r"\mathrm{G}\lambda"})
+_WAVELENGTHS = {"lambda": LAMBDA, "klambda": 1e3 * LAMBDA, "Mlambda": 1e6 * LAMBDA, "Glambda": GLAMBDA}
 
 # What each kind of quantity is kept in, and how an example of it is written.
 KINDS: dict[str, tuple[str, str]] = {
@@ -30,11 +37,13 @@ KINDS: dict[str, tuple[str, str]] = {
     "distance": ("Mpc", "16.8 Mpc"),
     "frequency": ("Hz", "230 GHz"),
     "flux density": ("Jy", "0.6 Jy"),
+    "baseline": ("lambda", "8 Glambda"),
 }
 _SPELLINGS = {
     **dict.fromkeys(("µas", "μas", "muas", "microarcsec"), "uas"),
     **dict.fromkeys(("M☉", "M_☉", "M_sun", "Msun"), "solMass"),
     **dict.fromkeys(("°", "degree", "degrees"), "deg"),
+    **{f"{prefix}λ": f"{prefix}lambda" for prefix in ("", "k", "M", "G")},
 }
 # Offered where a name is close to one of them; any other name that astropy can convert is accepted too.
 _OFFERED: dict[str, tuple[str, ...]] = {
@@ -45,6 +54,7 @@ _OFFERED: dict[str, tuple[str, ...]] = {
     "distance": ("Mpc", "kpc", "pc"),
     "frequency": ("GHz", "MHz", "Hz"),
     "flux density": ("Jy", "mJy"),
+    "baseline": ("Glambda", "Mlambda", "klambda", "lambda"),
 }
 _GRAVITATIONAL_RADII = ("rg", "r_g", "Rg", "R_g", "GM/c^2", "GM/c²", "GM/c**2")
 _PARTS = re.compile(
@@ -90,6 +100,29 @@ def parse_given(value: object, kind: str) -> float:
     if isinstance(value, int | float) and not isinstance(value, bool):
         raise ValueError(f'{shown(value)} has no unit; write it as text with one, like "{example}"')
     raise ValueError(f'{shown(value)} is not {_a(kind)}; write it as text, like "{example}"')
+
+
+def parse_array(given: object, kind: str) -> NDArray[np.float64]:
+    """The same for what a notebook gives: a Quantity of any shape, a text, or a sequence of either.
+
+    Raises
+    ------
+    ValueError
+        If a unit is missing or is of another kind.
+    """
+    if isinstance(given, u.Quantity):
+        unit, example = KINDS[kind]
+        try:
+            return np.asarray(given.to_value(_unit(unit)), dtype=np.float64)
+        except u.UnitConversionError:
+            raise ValueError(
+                f"{str(given)[:LONGEST_SHOWN]} is not {_a(kind)}; give one like {example}"
+            ) from None
+    if isinstance(given, np.ndarray | np.generic):
+        given = given.tolist()
+    if isinstance(given, list | tuple):
+        return np.array([parse_array(each, kind) for each in given])
+    return np.asarray(parse_given(given, kind))
 
 
 def plain_number(value: object) -> float:
@@ -144,11 +177,15 @@ def _refuse_lookalikes(number: str, name: str, kind: str) -> None:
         raise ValueError(f"'{number} mpc' reads as milliparsecs; megaparsecs are written \"{number} Mpc\"")
 
 
+def _unit(name: str) -> str | u.UnitBase:
+    return _WAVELENGTHS.get(name, name)
+
+
 def _converted(number: str, name: str, kind: str) -> float:
     unit, example = KINDS[kind]
     value, given = float(number), f"{number} {name}"
     try:
-        quantity = u.Quantity(value, name)
+        quantity = u.Quantity(value, _unit(name))
     except (ValueError, TypeError):
         close = get_close_matches(name.lower(), [one.lower() for one in _OFFERED[kind]], n=1)
         offered = [one for one in _OFFERED[kind] if one.lower() in close]
@@ -159,7 +196,7 @@ def _converted(number: str, name: str, kind: str) -> float:
         raise ValueError(f'{shown(given)} is a wavelength; write the frequency, "{frequency:.4g} GHz"')
     try:
         with np.errstate(over="ignore"):
-            converted = float(quantity.to_value(unit))
+            converted = float(quantity.to_value(_unit(unit)))
     except u.UnitConversionError:
         raise ValueError(f'{shown(given)} is not {_a(kind)}; write it like "{example}"') from None
     if not np.isfinite(converted):

@@ -42,7 +42,7 @@ TILE = 32_768
 # Points that the transform's spreading kernel needs beyond its grid.
 KERNEL_WIDTH = 16
 # Bytes at the peak, as measured: per cell of the grid between samples and baselines, and per pixel.
-BYTES_PER_CELL = 100
+BYTES_PER_CELL = 120
 BYTES_PER_PIXEL = 100
 MEMORY_SHARE = 0.8
 # One thread gives the same last digit every time, and workers of a scan have no more.

@@ -25,6 +25,9 @@ from raytrace.registry import or_default
 
 # Neighbouring panel edges differ by at most this factor in radius: a power law then needs few nodes.
 PANEL_RATIO = 1.7
+# Gas that falls in from the innermost stable orbit gathers speed as the power 3/2 of the distance from it. Where the
+# emitter has an edge there, panels on its inner side shrink toward it, by these shares of its radius.
+GRADED = (1.0 / 12.0, 1.0 / 85.0)
 NODES = 12
 
 
@@ -123,8 +126,10 @@ def panel_radii(edges: Sequence[float], spacetime: Spacetime) -> Array:
         raise ValueError(
             f"the emitter's inner edge {own[0]:g} M lies inside the horizon at {spacetime.horizon:g} M"
         )
-    marks = [r for r in (spacetime.photon_orbit, spacetime.isco) if own[0] < r < own[-1]]
-    corners = np.union1d(own, marks)
+    marks = [spacetime.photon_orbit, spacetime.isco]
+    if spacetime.isco in own:
+        marks += [spacetime.isco * (1.0 - share) for share in GRADED]
+    corners = np.union1d(own, [r for r in marks if own[0] < r < own[-1]])
     pieces = [
         np.geomspace(low, high, 1 + math.ceil(math.log(high / low) / math.log(PANEL_RATIO)))[:-1]
         for low, high in pairwise(corners)

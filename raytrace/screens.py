@@ -9,21 +9,24 @@ on the screen [M²].
 from __future__ import annotations
 
 import math
-from collections.abc import Sequence
+from collections.abc import Callable, Sequence
 from dataclasses import dataclass
+from functools import partial
 
 import numpy as np
 from numpy.typing import ArrayLike, NDArray
 
-from raytrace.contract import Array, Spacetime
+from raytrace.contract import Array, RayStatus, Spacetime
 from raytrace.isoradials import checked_inclination
-from raytrace.panels import Band, band, panel_radii
+from raytrace.panels import NODES, Band, band, panel_radii
 from raytrace.registry import or_default
 from raytrace.series import BandSeries
 
 FEWEST_ANGLES = 16
 MOST_ANGLES = 2048
 MOST_NODES = 48
+# Twice the samples should leave less than this share of a tail; where they do not, it is rounding.
+STALLED = 0.7
 # The brightness on which the screen is judged: as steep as emission near the hole usually is.
 TEST_SLOPE = 3.0
 
@@ -125,58 +128,68 @@ def screen(
     if not 0.0 < tolerance < 1.0:
         raise ValueError(f"the tolerance {tolerance!r} is a relative error and must lie between 0 and 1")
     radii = panel_radii(edges, hole)
-    resolved = [_resolved(hole, radii, order, inclination, tolerance) for order in range(orders)]
-    bands = tuple(band for band, _ in resolved)
+    judged = partial(_test_brightness, hole, inclination)
+    found = [
+        resolved(radii, judged, order=order, inclination=inclination, tolerance=tolerance, spacetime=hole)
+        for order in range(orders)
+    ]
+    bands = tuple(series.band for series in found)
     return Screen(
         alpha=np.concatenate([band.alpha.ravel() for band in bands]),
         beta=np.concatenate([band.beta.ravel() for band in bands]),
         weight=np.concatenate([band.weight.ravel() for band in bands]),
         order=np.concatenate([np.full(math.prod(band.shape), band.order) for band in bands]),
-        error=np.array([error for _, error in resolved]),
+        error=np.array([series.error() for series in found]),
         bands=bands,
     )
 
 
-def _resolved(
-    hole: Spacetime, radii: Array, order: int, inclination: float, tolerance: float
-) -> tuple[Band, float]:
-    """Refine one band until light as steep as r⁻³ is interpolated to the tolerance, and say what was
-    reached.
-    """
-    sampled = band(radii, order=order, inclination=inclination, angles=FEWEST_ANGLES, spacetime=hole)
-    while True:
-        series = BandSeries.of(sampled, _test_brightness(hole, sampled, inclination))
-        finer = refined(series, tolerance, inclination, hole)
-        if finer is None:
-            return sampled, series.error()
-        sampled = finer
+def resolved(
+    radii: Array,
+    brightness: Callable[[Band], Array],
+    *,
+    order: int,
+    inclination: float,
+    tolerance: float,
+    spacetime: Spacetime,
+) -> BandSeries:
+    """Sample a brightness on the band of one order, doubling nodes or angles until the tails of its series are
+    below a tolerance, a limit is reached or doubling no longer helps (rounding).
 
-
-def refined(series: BandSeries, tolerance: float, inclination: float, spacetime: Spacetime) -> Band | None:
-    """A band with twice the nodes or angles where a tail of the series asks for it; None where none does or a
-    limit is reached.
+    Parameters
+    ----------
+    radii : array (panels + 1,)
+        As `panel_radii` gives them [M].
+    brightness : callable
+        Takes a band, returns what shines at its samples, shape (panels, q, n_angles).
+    order, inclination, tolerance, spacetime
+        As for `screen`.
     """
-    sampled = series.band
-    across, around = series.tails()
-    nodes, angles = len(sampled.nodes), len(sampled.angles)
-    if across > tolerance and nodes < MOST_NODES:
-        nodes *= 2
-    if around > tolerance and angles < MOST_ANGLES:
+
+    def sample(nodes: int, angles: int) -> Band:
         return band(
-            sampled.radii,
-            order=sampled.order,
-            inclination=inclination,
-            angles=2 * angles,
-            nodes=nodes,
-            spacetime=spacetime,
+            radii, order=order, inclination=inclination, angles=angles, nodes=nodes, spacetime=spacetime
         )
-    return None if nodes == len(sampled.nodes) else sampled.with_nodes(nodes)
+
+    sampled = sample(NODES, FEWEST_ANGLES)
+    before = (math.inf, math.inf)
+    while True:
+        series = BandSeries.of(sampled, brightness(sampled))
+        tails = series.tails()
+        nodes, angles = len(sampled.nodes), len(sampled.angles)
+        more_nodes = tolerance < tails[0] < STALLED * before[0] and nodes < MOST_NODES
+        more_angles = tolerance < tails[1] < STALLED * before[1] and angles < MOST_ANGLES
+        if not more_nodes and not more_angles:
+            return series
+        before = (tails[0] if more_nodes else before[0], tails[1] if more_angles else before[1])
+        nodes = 2 * nodes if more_nodes else nodes
+        sampled = sample(nodes, 2 * angles) if more_angles else sampled.with_nodes(nodes)
 
 
-def _test_brightness(hole: Spacetime, sampled: Band, inclination: float) -> Array:
+def _test_brightness(hole: Spacetime, inclination: float, sampled: Band) -> Array:
     """The test brightness r⁻³ on a band, scaled to 1 at its inner edge; shape (panels, q, n_angles)."""
     hit = hole.trace_rays(
         sampled.alpha.ravel(), sampled.beta.ravel(), inclination, sampled.order + 1, False, False, False
     )
-    radius = np.where(hit.status[-1] == 0, hit.radius[-1], np.inf)
+    radius = np.where(hit.status[-1] == RayStatus.CROSSED, hit.radius[-1], np.inf)
     return ((sampled.radii[0] / radius) ** TEST_SLOPE).reshape(sampled.shape)

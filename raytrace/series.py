@@ -7,7 +7,7 @@ traces no ray. G = c = M = 1; angles in radians.
 
 from __future__ import annotations
 
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 from functools import cache
 from typing import Any
 
@@ -26,6 +26,9 @@ FEWEST_IN_TAIL = 3
 ROUNDING = 32.0
 # Legendre coefficients at the end of a panel's series that are taken as its tail.
 TAIL_TERMS = 2
+# Where brightness has a corner within a panel its N coefficients fall as l^−4 at worst: what lies beyond the last two
+# is then this share of N times them.
+BEYOND_TAIL = 1.0 / 6.0
 
 
 @dataclass(frozen=True)
@@ -88,6 +91,11 @@ class BandSeries:
         value = legendre.legval(x, coefficients[panel, :, index].T, tensor=False)
         return np.where(inside, value, 0.0).reshape(b.shape)
 
+    @property
+    def caution(self) -> float:
+        """How many times what the tail across panels holds may lie beyond it."""
+        return max(1.0, BEYOND_TAIL * self.coefficients.shape[1])
+
     def flux(self) -> float:
         """∫ over the band [the quantity's unit times M²]."""
         return float(np.sum(self.band.weight * self.values))
@@ -107,7 +115,7 @@ class BandSeries:
         scale = float(np.max(np.abs(values))) or 1.0
         flux = np.sum(self.band.weight * values, axis=(0, 1))
         return (
-            float(np.max(np.sum(np.abs(self.coefficients[:, -TAIL_TERMS:]), axis=1))) / scale,
+            self.caution * float(np.max(np.sum(np.abs(self.coefficients[:, -TAIL_TERMS:]), axis=1))) / scale,
             max(
                 _tail(values) / scale,
                 len(flux) * _tail(flux[None, None]) / (abs(float(flux.sum())) or 1.0),
@@ -123,6 +131,14 @@ class BandSeries:
         unit = ROUNDING * float(np.finfo(np.float64).eps)
         moved = self._shift(unit * np.max(np.abs(self.band.edges), axis=1))
         return sum(self.tails()) + moved / scale + unit * len(self.band.angles)
+
+    def without_tails(self) -> BandSeries:
+        """The same series cut short where its tails begin, across and around: by how much it differs in what is
+        computed from it says how far that can be trusted.
+        """
+        coefficients = _without_tail(self.coefficients)
+        coefficients[:, -TAIL_TERMS:] = 0.0
+        return BandSeries(replace(self.band, offsets=_without_tail(self.band.offsets)), coefficients)
 
     def _shift(self, moved: Array) -> float:
         """Largest change of the quantity if each panel edge moves by a length (panels + 1,) [M]."""
@@ -160,7 +176,7 @@ def equally_spaced(rows: Array, count: int) -> Array:
     shift = np.exp(-1j * np.arange(spectrum.shape[-1]) * np.pi / sampled)
     if sampled % 2 == 0:
         spectrum[..., -1] *= 0.5
-    return np.fft.irfft(spectrum * shift, n=count, axis=-1) * (count / sampled)
+    return np.asarray(np.fft.irfft(spectrum * shift, n=count, axis=-1) * (count / sampled))
 
 
 def _tail(rows: Array, each_row: bool = False) -> Any:
@@ -168,6 +184,17 @@ def _tail(rows: Array, each_row: bool = False) -> Any:
     over the first unless each row is asked for.
     """
     sizes = np.max(np.abs(np.fft.rfft(rows, axis=-1)), axis=1)
-    count = max(FEWEST_IN_TAIL, int(TAIL_SHARE * sizes.shape[-1]))
+    count = _tail_length(sizes.shape[-1])
     held = 2.0 * np.sum(sizes[:, -count:], axis=1) / rows.shape[-1]
     return held if each_row else float(np.max(held))
+
+
+def _without_tail(rows: Array) -> Array:
+    """The same rows without the last coefficients of their trigonometric series."""
+    spectrum = np.fft.rfft(rows, axis=-1)
+    spectrum[..., -_tail_length(spectrum.shape[-1]) :] = 0.0
+    return np.fft.irfft(spectrum, n=rows.shape[-1], axis=-1)
+
+
+def _tail_length(coefficients: int) -> int:
+    return max(FEWEST_IN_TAIL, int(TAIL_SHARE * coefficients))

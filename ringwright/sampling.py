@@ -17,8 +17,8 @@ import numpy as np
 import emission as em
 import raytrace as rt
 from raytrace.contract import Array, Hit
-from raytrace.panels import NODES, Band, band, gauss_legendre, panel_radii
-from raytrace.screens import FEWEST_ANGLES, refined
+from raytrace.panels import NODES, Band, gauss_legendre, panel_radii
+from raytrace.screens import FEWEST_ANGLES, resolved
 from raytrace.series import BandSeries
 
 if TYPE_CHECKING:
@@ -84,32 +84,17 @@ def _orders(
     found: list[SampledLight] = []
     fronts: list[Array] = []
     for order in range(scene.orders):
-        series = _resolved(scene, strength, emitter, radii, order, accuracy)
+        series = resolved(
+            radii,
+            lambda sampled: strength * _brightness(scene, emitter, sampled),
+            order=order,
+            inclination=scene.inclination,
+            tolerance=accuracy,
+            spacetime=scene.spacetime,
+        )
         found.append(SampledLight(order, series, tuple(fronts) if emitter.opaque else (), series.error()))
         fronts.append(series.band.edges[[0, -1]])
     return found
-
-
-def _resolved(
-    scene: Scene,
-    strength: float,
-    emitter: em.contract.Emitter,
-    radii: Array,
-    order: int,
-    accuracy: float,
-) -> BandSeries:
-    """Double angles or nodes until the tails of the brightness are below the accuracy or a limit is
-    reached.
-    """
-    sampled = band(
-        radii, order=order, inclination=scene.inclination, angles=FEWEST_ANGLES, spacetime=scene.spacetime
-    )
-    while True:
-        series = BandSeries.of(sampled, strength * _brightness(scene, emitter, sampled))
-        finer = refined(series, accuracy, scene.inclination, scene.spacetime)
-        if finer is None:
-            return series
-        sampled = finer
 
 
 def _brightness(scene: Scene, emitter: em.contract.Emitter, sampled: Band) -> Array:

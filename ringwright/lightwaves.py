@@ -1,0 +1,278 @@
+"""The visibility of a scene's light straight from the screen: no pixel, no grid, any baseline.
+
+V(u, v) = ∬ I exp[−2πi(ux + vy)] dx dy with x to the east and y to the north. Panel by panel the radial integral is
+closed (`ringwright.kernels.fourier`) and the angular one a sum over equally spaced angles, as many as the phase
+turns; where many baselines share a direction, samples of a panel's series along it and a fast transform in one
+dimension do the same sooner. Rays are not traced again, however long the baseline. Wavenumbers are 2π u GM/(c²D) [rad per M]; results are
+in the brightness's unit times M².
+"""
+
+from __future__ import annotations
+
+import math
+from collections.abc import Sequence
+from concurrent.futures import ThreadPoolExecutor
+from dataclasses import replace
+from functools import cache
+
+import numpy as np
+from numpy.polynomial import legendre
+from numpy.typing import NDArray
+
+from raytrace.contract import Array
+from raytrace.kernels import threads
+from raytrace.panels import gauss_legendre
+from raytrace.series import BandSeries, equally_spaced, legendre_transform
+from ringwright.errors import InputError
+from ringwright.kernels.fourier import add_panel
+from ringwright.machine import core_count
+from ringwright.sampling import SampledLight
+
+Complex = NDArray[np.complex128]
+Panels = NDArray[np.int64]
+# Inner and outer edge (angles,) [M] and Legendre coefficients (terms, angles) between them.
+Part = tuple[Array, Array, Array]
+# A sum over N equally spaced angles is exact for phases that turn less than N times; beyond κb their spectrum, that
+# of J_m(κb), falls off within a few (κb)^⅓.
+FALL_OFF = 10.0
+FEWEST = 24
+# In every direction with enough baselines a panel is summed as samples along that direction: Gauss–Legendre rules
+# of so many nodes on pieces across which the phase turns by at most so many radians either way (error below 1e-13).
+PIECE_NODES = 48
+PIECE_PHASE = 40.0
+# A sample costs about as much as half a baseline's closed form at one angle.
+SAMPLES_PER_BASELINE = 2.0
+# Samples held at a time, and the error of the fast transform relative to the light: its finest.
+SAMPLES_AT_A_TIME = 1 << 20
+TRANSFORM_ACCURACY = 1e-13
+# Baselines integrated together have lengths within this factor and share one number of angles.
+BLOCK_RATIO = 1.25
+# Where opaque gas in front cuts a panel in part, its visible edge has corners: so many times more angles.
+CORNER_ANGLES = 8
+# Share of the flux to which sums and transforms are exact.
+ROUNDING = 1e-12
+# Legendre terms below this share of the error that the light has anyway are left out.
+NEGLIGIBLE = 0.01
+
+
+def visibility(light: SampledLight, *, wavenumber: Array, turn: Array) -> Complex:
+    """Visibility of one order of one emitter.
+
+    Parameters
+    ----------
+    light : SampledLight
+    wavenumber : array (n,)
+        2π u GM/(c²D) [rad per M], from 0.
+    turn : array (n,)
+        Position angle of the scene's +β less that of the baseline [rad].
+
+    Returns
+    -------
+    complex array (n,)
+        In the brightness's unit times M²; at 0 the flux.
+
+    Raises
+    ------
+    InputError
+        If the light has no edge and fills the field.
+    """
+    if light.boundless:
+        raise InputError(
+            "light from infinity fills whatever field is drawn and has no visibility of its own; leave the backdrop out"
+        )
+    found = np.zeros(wavenumber.size, dtype=np.complex128)
+    alone = np.ones(light.series.coefficients.shape[:1] + wavenumber.shape, dtype=bool)
+    tasks = []
+    for direction in np.unique(turn):
+        same = np.flatnonzero(turn == direction)
+        for panel in _worth_sampling(light, wavenumber[same]):
+            tasks.append((same, panel, direction))
+            alone[panel, same] = False
+    with ThreadPoolExecutor(core_count()) as pool:
+        # Numbers do not depend on how many threads there are: each task has one, and sums keep their order.
+        parts = pool.map(lambda task: _along(light, task[1], wavenumber[task[0]], task[2]), tasks)
+        for (same, _, _), part in zip(tasks, parts, strict=True):
+            found[same] += part
+    return found + _in_closed_form(light, alone, wavenumber, turn)
+
+
+def interpolation_error(light: SampledLight, *, wavenumber: Array, turn: Array) -> Array:
+    """Estimated error of `visibility`: what the tails of the light's series contribute and may leave out, and
+    rounding; shape (n,).
+    """
+    without = replace(light, series=light.series.without_tails())
+    whole = visibility(light, wavenumber=wavenumber, turn=turn)
+    contributed = np.abs(whole - visibility(without, wavenumber=wavenumber, turn=turn))
+    longest_first = np.argsort(-wavenumber, kind="stable")
+    found = np.empty_like(contributed)
+    # Tails vanish by chance on single baselines, and on the shortest by symmetry: a baseline is trusted no further
+    # than those beyond it.
+    found[longest_first] = np.maximum.accumulate(contributed[longest_first])
+    return light.series.caution * found + ROUNDING * light.series.flux()
+
+
+def _worth_sampling(light: SampledLight, wavenumber: Array) -> Panels:
+    """Panels that need fewer samples across than these baselines make worthwhile."""
+    half = 0.5 * np.max(light.series.band.widths, axis=1)
+    across = PIECE_NODES * np.ceil(float(np.max(wavenumber)) * half / PIECE_PHASE)
+    return np.flatnonzero(across < SAMPLES_PER_BASELINE * wavenumber.size)
+
+
+def _along(light: SampledLight, panel: int, wavenumber: Array, direction: float) -> Complex:
+    """What a panel contributes to baselines of one direction: its samples, projected on that direction."""
+    import finufft
+
+    longest = float(np.max(wavenumber))
+    angles = _angles(longest * _reach(light.series)[panel], len(light.series.band.angles))
+    found = np.zeros(wavenumber.size, dtype=np.complex128)
+    for low, high, coefficients in _visible(light, panel, angles):
+        pieces = max(1, math.ceil(0.5 * longest * float(np.max(high - low)) / PIECE_PHASE))
+        x, weights = _pieces(pieces)
+        rows = legendre.legvander(x, coefficients.shape[0] - 1)
+        chunk = max(1, SAMPLES_AT_A_TIME // x.size)
+        angle = np.arange(low.size) * (math.tau / low.size)
+        for start in range(0, low.size, chunk):
+            some = slice(start, start + chunk)
+            half = 0.5 * (high[some] - low[some])
+            b = 0.5 * (low[some] + high[some]) + half * x[:, None]
+            flux = (rows @ coefficients[:, some]) * b * half * weights[:, None] * (math.tau / low.size)
+            place = b * np.sin(angle[some] + direction)
+            found += finufft.nufft1d3(
+                place.ravel(),
+                flux.ravel().astype(np.complex128),
+                wavenumber,
+                isign=-1,
+                eps=TRANSFORM_ACCURACY,
+            )
+    return found
+
+
+@cache
+def _pieces(count: int) -> tuple[Array, Array]:
+    """A composite Gauss–Legendre rule on (−1, 1)."""
+    points, weights = gauss_legendre(PIECE_NODES)
+    middles = (2.0 * np.arange(count) + 1.0) / count - 1.0
+    return (middles[:, None] + points / count).ravel(), np.tile(weights / count, count)
+
+
+def _in_closed_form(
+    light: SampledLight, chosen: NDArray[np.bool_], wavenumber: Array, turn: Array
+) -> Complex:
+    """What each panel contributes to the baselines chosen for it (panels, n), one by one."""
+    found = np.zeros((2, wavenumber.size))
+    reach = _reach(light.series)
+    for panel in range(chosen.shape[0]):
+        index = np.flatnonzero(chosen[panel])
+        index = index[np.argsort(wavenumber[index], kind="stable")]
+        for block in _blocks(wavenumber[index]):
+            some = index[block]
+            angles = _angles(float(wavenumber[some[-1]]) * reach[panel], len(light.series.band.angles))
+            for low, high, coefficients in _visible(light, panel, angles):
+                middle, half = 0.5 * (low + high), 0.5 * (high - low)
+                rows = np.ascontiguousarray(_times_distance(coefficients, middle, half).T)
+                added = np.zeros((2, some.size))
+                with threads.LOCK:
+                    add_panel(*added, wavenumber[some], turn[some], middle, half, rows)
+                found[:, some] += added
+    return found[0] + 1j * found[1]
+
+
+def _blocks(ascending: Array) -> list[slice]:
+    """Runs of baselines that share one number of angles."""
+    blocks, start = [], 0
+    while start < ascending.size:
+        limit = max(BLOCK_RATIO * float(ascending[start]), 1.0)
+        stop = max(int(np.searchsorted(ascending, limit, side="right")), start + 1)
+        blocks.append(slice(start, stop))
+        start = stop
+    return blocks
+
+
+def _angles(phase: float, sampled: int) -> int:
+    """How many angles a phase of so many radians, on top of the light's own structure, asks for."""
+    return math.ceil(phase + FALL_OFF * phase ** (1.0 / 3.0)) + sampled + FEWEST
+
+
+def _reach(series: BandSeries) -> Array:
+    """Fastest turn of a phase around each panel per wavenumber, max √(b² + b'²) [M], shape (panels,)."""
+    edges = series.band.edges
+    spectrum = np.fft.rfft(edges, axis=-1)
+    slope = np.fft.irfft(1j * np.arange(spectrum.shape[-1]) * spectrum, n=edges.shape[-1], axis=-1)
+    fastest = np.max(np.hypot(edges, slope), axis=-1)
+    return np.maximum(fastest[:-1], fastest[1:])
+
+
+def _times_distance(coefficients: Array, middle: Array, half: Array) -> Array:
+    """Legendre coefficients of brightness × (middle + half x), signed (−1)^⌊l/2⌋, one more than before.
+
+    By x P_l = [(l + 1) P_{l+1} + l P_{l−1}] / (2l + 1) (NIST DLMF 18.9.1).
+    """
+    count, angles = coefficients.shape
+    degree = np.arange(count)[:, None]
+    product = np.zeros((count + 1, angles))
+    product[:count] = coefficients * middle
+    product[1:] += coefficients * half * (degree + 1) / (2 * degree + 1)
+    product[: count - 1] += (coefficients * half * degree / (2 * degree + 1))[1:]
+    signs = np.where(np.arange(count + 1) // 2 % 2 == 0, 1.0, -1.0)
+    return product * signs[:, None]
+
+
+def _visible(light: SampledLight, panel: int, angles: int) -> list[Part]:
+    """The parts of a panel that nothing opaque hides: their edges [M] and Legendre coefficients around the screen."""
+    whole = _panel(light, panel, angles)
+    if not light.fronts:
+        return [whole]
+    fronts = [equally_spaced(front, angles) for front in light.fronts]
+    if _cut_in_part(whole, fronts):
+        angles *= CORNER_ANGLES
+        whole = _panel(light, panel, angles)
+        fronts = [equally_spaced(front, angles) for front in light.fronts]
+    parts = [(whole[0], whole[1])]
+    for front in fronts:
+        parts = [piece for low, high in parts for piece in _outside(low, high, front)]
+    return [
+        (low, high, _on_part(whole, low, high, whole[2].shape[0]))
+        for low, high in parts
+        if np.any(high > low)
+    ]
+
+
+def _panel(light: SampledLight, panel: int, angles: int) -> Part:
+    """Edges and coefficients of a whole panel at equally spaced angles from 0."""
+    series = light.series
+    curve = series.band.curve(math.tau / angles * np.arange(angles, dtype=np.float64))
+    offsets = equally_spaced(series.band.offsets[panel : panel + 2], angles)
+    scale = float(np.max(np.abs(series.coefficients)))
+    sizes = np.max(np.abs(series.coefficients[panel]), axis=1)
+    needed = np.flatnonzero(sizes > NEGLIGIBLE * light.error * scale)
+    terms = int(needed[-1]) + 1 if needed.size else 1
+    low, high = curve + offsets
+    return low, high, equally_spaced(series.coefficients[panel, :terms], angles)
+
+
+def _cut_in_part(whole: Part, fronts: Sequence[Array]) -> bool:
+    """Whether an edge of something in front crosses an edge of the panel at some angle."""
+    low, high, _ = whole
+    return any(
+        np.any(front[side] > edge) and np.any(front[side] < edge)
+        for front in fronts
+        for side in (0, 1)
+        for edge in (low, high)
+    )
+
+
+def _outside(low: Array, high: Array, front: Array) -> list[tuple[Array, Array]]:
+    """What is left of low to high beside low to high of a front; empty intervals have no width."""
+    inside = np.minimum(high, front[0])
+    beyond = np.maximum(low, front[1])
+    return [(low, np.maximum(inside, low)), (np.minimum(beyond, high), high)]
+
+
+def _on_part(whole: Part, low: Array, high: Array, nodes: int) -> Array:
+    """Legendre coefficients of a panel's series on a part of it, angle by angle."""
+    start, end, coefficients = whole
+    points, _ = gauss_legendre(nodes)
+    b = 0.5 * (low + high) + 0.5 * (high - low) * points[:, None]
+    x = (2.0 * b - start - end) / (end - start)
+    values = np.asarray(legendre.legval(x, coefficients[:, None, :], tensor=False), dtype=np.float64)
+    return legendre_transform(nodes) @ values

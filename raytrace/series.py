@@ -22,6 +22,8 @@ from raytrace.panels import Band, gauss_legendre
 # all, half a step off angle 0, light that is even about the β axis cannot be seen, and at every other one an even ring.
 TAIL_SHARE = 0.1
 FEWEST_IN_TAIL = 3
+# Share that is cut to see what a tail does: in a slowly falling series as much lies beyond its end as in its last quarter.
+CUT_SHARE = 0.25
 # Units in the last place by which a ray's distance from the origin, and what each angle adds to a sum, is known.
 ROUNDING = 32.0
 # Legendre coefficients at the end of a panel's series that are taken as its tail.
@@ -184,7 +186,7 @@ def _tail(rows: Array, each_row: bool = False) -> Any:
     over the first unless each row is asked for.
     """
     sizes = np.max(np.abs(np.fft.rfft(rows, axis=-1)), axis=1)
-    count = _tail_length(sizes.shape[-1])
+    count = max(FEWEST_IN_TAIL, int(TAIL_SHARE * sizes.shape[-1]))
     held = 2.0 * np.sum(sizes[:, -count:], axis=1) / rows.shape[-1]
     return held if each_row else float(np.max(held))
 
@@ -192,9 +194,5 @@ def _tail(rows: Array, each_row: bool = False) -> Any:
 def _without_tail(rows: Array) -> Array:
     """The same rows without the last coefficients of their trigonometric series."""
     spectrum = np.fft.rfft(rows, axis=-1)
-    spectrum[..., -_tail_length(spectrum.shape[-1]) :] = 0.0
+    spectrum[..., -max(FEWEST_IN_TAIL, int(CUT_SHARE * spectrum.shape[-1])) :] = 0.0
     return np.fft.irfft(spectrum, n=rows.shape[-1], axis=-1)
-
-
-def _tail_length(coefficients: int) -> int:
-    return max(FEWEST_IN_TAIL, int(TAIL_SHARE * coefficients))

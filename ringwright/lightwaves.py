@@ -9,11 +9,12 @@ in the brightness's unit times M².
 
 from __future__ import annotations
 
+import itertools
 import math
-from collections.abc import Sequence
 from concurrent.futures import ThreadPoolExecutor
 from dataclasses import replace
 from functools import cache
+from typing import NamedTuple
 
 import numpy as np
 from numpy.polynomial import legendre
@@ -22,7 +23,8 @@ from numpy.typing import NDArray
 from raytrace.contract import Array
 from raytrace.kernels import threads
 from raytrace.panels import gauss_legendre
-from raytrace.series import BandSeries, equally_spaced, legendre_transform
+from raytrace.roots import bracketed_roots
+from raytrace.series import BandSeries, equally_spaced, legendre_transform, trigonometric_weights
 from ringwright.errors import InputError
 from ringwright.kernels.fourier import add_panel
 from ringwright.machine import core_count
@@ -30,8 +32,6 @@ from ringwright.sampling import SampledLight
 
 Complex = NDArray[np.complex128]
 Panels = NDArray[np.int64]
-# Inner and outer edge (angles,) [M] and Legendre coefficients (terms, angles) between them.
-Part = tuple[Array, Array, Array]
 # A sum over N equally spaced angles is exact for phases that turn less than N times; beyond κb their spectrum, that
 # of J_m(κb), falls off within a few (κb)^⅓.
 FALL_OFF = 10.0
@@ -47,12 +47,27 @@ SAMPLES_AT_A_TIME = 1 << 20
 TRANSFORM_ACCURACY = 1e-13
 # Baselines integrated together have lengths within this factor and share one number of angles.
 BLOCK_RATIO = 1.25
-# Where opaque gas in front cuts a panel in part, its visible edge has corners: so many times more angles.
-CORNER_ANGLES = 8
+# Angles on which crossings of two edges are looked for, per sampled angle: edges that cross twice in between are missed.
+SEARCHED = 16
+# Gauss–Legendre nodes on a piece of an arc between crossings, and the radians of phase that one such piece may hold.
+ARC_NODES = 24
+ARC_PHASE = 14.0
 # Share of the flux to which sums and transforms are exact.
 ROUNDING = 1e-12
 # Legendre terms below this share of the error that the light has anyway are left out.
 NEGLIGIBLE = 0.01
+
+
+class Part(NamedTuple):
+    """A part of a panel that is seen: edges (angles,) [M], Legendre coefficients (terms, angles) between them, and a
+    rule for the sum over angles.
+    """
+
+    low: Array
+    high: Array
+    coefficients: Array
+    angle: Array
+    weight: Array
 
 
 def visibility(light: SampledLight, *, wavenumber: Array, turn: Array) -> Complex:
@@ -125,24 +140,24 @@ def _along(light: SampledLight, panel: int, wavenumber: Array, direction: float)
     longest = float(np.max(wavenumber))
     angles = _angles(longest * _reach(light.series)[panel], len(light.series.band.angles))
     found = np.zeros(wavenumber.size, dtype=np.complex128)
-    for low, high, coefficients in _visible(light, panel, angles):
-        pieces = max(1, math.ceil(0.5 * longest * float(np.max(high - low)) / PIECE_PHASE))
+    for part in _visible(light, panel, angles):
+        pieces = max(1, math.ceil(0.5 * longest * float(np.max(part.high - part.low)) / PIECE_PHASE))
         x, weights = _pieces(pieces)
-        rows = legendre.legvander(x, coefficients.shape[0] - 1)
+        rows = legendre.legvander(x, part.coefficients.shape[0] - 1)
         chunk = max(1, SAMPLES_AT_A_TIME // x.size)
-        angle = np.arange(low.size) * (math.tau / low.size)
-        for start in range(0, low.size, chunk):
-            some = slice(start, start + chunk)
-            half = 0.5 * (high[some] - low[some])
-            b = 0.5 * (low[some] + high[some]) + half * x[:, None]
-            flux = (rows @ coefficients[:, some]) * b * half * weights[:, None] * (math.tau / low.size)
-            place = b * np.sin(angle[some] + direction)
+        for start in range(0, part.low.size, chunk):
+            low, high, coefficients, angle, weight = (each[..., start : start + chunk] for each in part)
+            half = 0.5 * (high - low)
+            b = 0.5 * (low + high) + half * x[:, None]
+            flux = (rows @ coefficients) * b * half * weights[:, None] * weight
+            place = b * np.sin(angle + direction)
             found += finufft.nufft1d3(
                 place.ravel(),
                 flux.ravel().astype(np.complex128),
                 wavenumber,
                 isign=-1,
                 eps=TRANSFORM_ACCURACY,
+                nthreads=1,
             )
     return found
 
@@ -167,12 +182,14 @@ def _in_closed_form(
         for block in _blocks(wavenumber[index]):
             some = index[block]
             angles = _angles(float(wavenumber[some[-1]]) * reach[panel], len(light.series.band.angles))
-            for low, high, coefficients in _visible(light, panel, angles):
-                middle, half = 0.5 * (low + high), 0.5 * (high - low)
-                rows = np.ascontiguousarray(_times_distance(coefficients, middle, half).T)
+            for part in _visible(light, panel, angles):
+                middle, half = 0.5 * (part.low + part.high), 0.5 * (part.high - part.low)
+                rows = np.ascontiguousarray(_times_distance(part.coefficients, middle, half).T)
                 added = np.zeros((2, some.size))
                 with threads.LOCK:
-                    add_panel(*added, wavenumber[some], turn[some], middle, half, rows)
+                    add_panel(
+                        *added, wavenumber[some], turn[some], middle, half, rows, part.angle, part.weight
+                    )
                 found[:, some] += added
     return found[0] + 1j * found[1]
 
@@ -218,61 +235,97 @@ def _times_distance(coefficients: Array, middle: Array, half: Array) -> Array:
 
 
 def _visible(light: SampledLight, panel: int, angles: int) -> list[Part]:
-    """The parts of a panel that nothing opaque hides: their edges [M] and Legendre coefficients around the screen."""
-    whole = _panel(light, panel, angles)
+    """The parts of a panel that nothing opaque hides, at so many angles or, cut by something in front, more."""
+    crossings = _crossings(light, panel) if light.fronts else np.empty(0)
+    if not crossings.size:
+        angle = math.tau / angles * np.arange(angles, dtype=np.float64)
+        weight = np.full(angles, math.tau / angles)
+        return _left_open(light, _whole(light, panel, angle, weight))
+    ends = np.append(crossings, crossings[0] + math.tau)
+    arcs = [_arc(start, stop, angles) for start, stop in itertools.pairwise(ends)]
+    return [part for arc in arcs for part in _left_open(light, _whole(light, panel, *arc))]
+
+
+def _whole(light: SampledLight, panel: int, angle: Array, weight: Array) -> Part:
+    """A whole panel at some angles."""
+    series = light.series
+    terms = _terms(light, panel)
+    rows = np.concatenate([series.band.offsets[panel : panel + 2], series.coefficients[panel, :terms]])
+    found = _at(rows, angle)
+    low, high = series.band.curve(angle) + found[:2]
+    return Part(low, high, found[2:], angle, weight)
+
+
+def _terms(light: SampledLight, panel: int) -> int:
+    """Legendre terms of a panel that matter."""
+    coefficients = np.abs(light.series.coefficients)
+    needed = np.flatnonzero(
+        np.max(coefficients[panel], axis=1) > NEGLIGIBLE * light.error * np.max(coefficients)
+    )
+    return int(needed[-1]) + 1 if needed.size else 1
+
+
+def _at(rows: Array, angle: Array) -> Array:
+    """Trigonometric interpolation of rows, by the fast transform where the angles are equally spaced from 0."""
+    step = math.tau / angle.size
+    if angle.size >= rows.shape[-1] and angle[0] == 0.0 and angle[-1] == step * (angle.size - 1):
+        return equally_spaced(rows, angle.size)
+    return rows @ trigonometric_weights(rows.shape[-1], angle)
+
+
+def _crossings(light: SampledLight, panel: int) -> Array:
+    """Angles, ascending, at which an edge of something in front crosses an edge of a panel."""
+    band = light.series.band
+
+    def apart(front: Array, edge: int, angle: Array) -> Array:
+        offset = band.offsets[edge] @ trigonometric_weights(len(band.angles), angle)
+        return front @ trigonometric_weights(front.size, angle) - band.curve(angle) - offset
+
+    found = []
+    in_front = itertools.chain.from_iterable(light.fronts)
+    for front, edge in itertools.product(in_front, (panel, panel + 1)):
+        grid = np.linspace(0.0, math.tau, SEARCHED * max(front.size, len(band.angles)) + 1)
+        beyond = apart(front, edge, grid) > 0.0
+        at = np.flatnonzero(beyond[1:] != beyond[:-1])
+        found.append(
+            bracketed_roots(lambda phi, _, f=front, e=edge: apart(f, e, phi), grid[at], grid[at + 1])  # type: ignore[misc]
+        )
+    return np.unique(np.concatenate(found))
+
+
+def _arc(start: float, stop: float, angles: int) -> tuple[Array, Array]:
+    """Angles and weights of a composite Gauss–Legendre rule on an arc, as dense as so many angles a turn."""
+    pieces = math.ceil((stop - start) * angles / (math.tau * ARC_PHASE))
+    points, weights = gauss_legendre(ARC_NODES)
+    half = 0.5 * (stop - start) / pieces
+    middles = start + half * (2.0 * np.arange(pieces) + 1.0)
+    return (middles[:, None] + half * points).ravel(), np.tile(half * weights, pieces)
+
+
+def _left_open(light: SampledLight, whole: Part) -> list[Part]:
+    """What opaque crossings in front leave of a panel; on each arc they lie to its edges in one way."""
+    parts = [(whole.low, whole.high)]
+    for front in light.fronts:
+        inner, outer = _at(front, whole.angle)
+        parts = [
+            piece
+            for low, high in parts
+            for piece in ((low, np.clip(inner, low, high)), (np.clip(outer, low, high), high))
+        ]
     if not light.fronts:
         return [whole]
-    fronts = [equally_spaced(front, angles) for front in light.fronts]
-    if _cut_in_part(whole, fronts):
-        angles *= CORNER_ANGLES
-        whole = _panel(light, panel, angles)
-        fronts = [equally_spaced(front, angles) for front in light.fronts]
-    parts = [(whole[0], whole[1])]
-    for front in fronts:
-        parts = [piece for low, high in parts for piece in _outside(low, high, front)]
     return [
-        (low, high, _on_part(whole, low, high, whole[2].shape[0]))
+        Part(low, high, _on_part(whole, low, high), whole.angle, whole.weight)
         for low, high in parts
         if np.any(high > low)
     ]
 
 
-def _panel(light: SampledLight, panel: int, angles: int) -> Part:
-    """Edges and coefficients of a whole panel at equally spaced angles from 0."""
-    series = light.series
-    curve = series.band.curve(math.tau / angles * np.arange(angles, dtype=np.float64))
-    offsets = equally_spaced(series.band.offsets[panel : panel + 2], angles)
-    scale = float(np.max(np.abs(series.coefficients)))
-    sizes = np.max(np.abs(series.coefficients[panel]), axis=1)
-    needed = np.flatnonzero(sizes > NEGLIGIBLE * light.error * scale)
-    terms = int(needed[-1]) + 1 if needed.size else 1
-    low, high = curve + offsets
-    return low, high, equally_spaced(series.coefficients[panel, :terms], angles)
-
-
-def _cut_in_part(whole: Part, fronts: Sequence[Array]) -> bool:
-    """Whether an edge of something in front crosses an edge of the panel at some angle."""
-    low, high, _ = whole
-    return any(
-        np.any(front[side] > edge) and np.any(front[side] < edge)
-        for front in fronts
-        for side in (0, 1)
-        for edge in (low, high)
-    )
-
-
-def _outside(low: Array, high: Array, front: Array) -> list[tuple[Array, Array]]:
-    """What is left of low to high beside low to high of a front; empty intervals have no width."""
-    inside = np.minimum(high, front[0])
-    beyond = np.maximum(low, front[1])
-    return [(low, np.maximum(inside, low)), (np.minimum(beyond, high), high)]
-
-
-def _on_part(whole: Part, low: Array, high: Array, nodes: int) -> Array:
+def _on_part(whole: Part, low: Array, high: Array) -> Array:
     """Legendre coefficients of a panel's series on a part of it, angle by angle."""
-    start, end, coefficients = whole
+    nodes = whole.coefficients.shape[0]
     points, _ = gauss_legendre(nodes)
     b = 0.5 * (low + high) + 0.5 * (high - low) * points[:, None]
-    x = (2.0 * b - start - end) / (end - start)
-    values = np.asarray(legendre.legval(x, coefficients[:, None, :], tensor=False), dtype=np.float64)
+    x = (2.0 * b - whole.low - whole.high) / (whole.high - whole.low)
+    values = np.asarray(legendre.legval(x, whole.coefficients[:, None, :], tensor=False), dtype=np.float64)
     return legendre_transform(nodes) @ values

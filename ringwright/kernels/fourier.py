@@ -92,7 +92,7 @@ def bessel_sums(omega, row, count):
 
 
 @kernel(parallel=True)
-def add_panel(real, imaginary, wavenumber, turn, middle, half, coefficients):
+def add_panel(real, imaginary, wavenumber, turn, middle, half, coefficients, angle, weight):
     """Add ∬ I e^{−iκ b sin(φ + turn)} b db dφ over one panel to every baseline.
 
     Parameters
@@ -103,14 +103,16 @@ def add_panel(real, imaginary, wavenumber, turn, middle, half, coefficients):
         2π times the baseline in wavelengths times GM/(c²D) [rad per M]; position angle of +β less that of the
         baseline [rad].
     middle, half : arrays (n_angles,)
-        Middle and half width of the panel at equally spaced screen angles from 0 [M].
+        Middle and half width of the panel [M].
     coefficients : array (n_angles, terms)
         Legendre coefficients of brightness times distance, times (−1)^⌊l/2⌋.
+    angle, weight : arrays (n_angles,)
+        Screen angles and the rule for a sum over them [rad].
     """
     angles, count = coefficients.shape
-    step = 2.0 * math.pi / angles
-    sines = np.sin(np.arange(angles) * step)
-    cosines = np.cos(np.arange(angles) * step)
+    sines = np.sin(angle)
+    cosines = np.cos(angle)
+    spread = 2.0 * weight * half
     for i in numba.prange(wavenumber.size):
         across, up = wavenumber[i] * math.cos(turn[i]), wavenumber[i] * math.sin(turn[i])
         sum_real = 0.0
@@ -123,7 +125,7 @@ def add_panel(real, imaginary, wavenumber, turn, middle, half, coefficients):
                 odd = -odd
             phase = along * middle[j]
             cosine, sine = math.cos(phase), math.sin(phase)
-            sum_real += half[j] * (even * cosine - odd * sine)
-            sum_imaginary -= half[j] * (even * sine + odd * cosine)
-        real[i] += 2.0 * step * sum_real
-        imaginary[i] += 2.0 * step * sum_imaginary
+            sum_real += spread[j] * (even * cosine - odd * sine)
+            sum_imaginary -= spread[j] * (even * sine + odd * cosine)
+        real[i] += sum_real
+        imaginary[i] += sum_imaginary

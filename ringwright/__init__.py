@@ -20,6 +20,8 @@ _HOMES = {
     "RingOutcome": "ringwright.ring",
     "measure": "ringwright.ring",
     "visibility": "ringwright.visibilities",
+    "Profile": "ringwright.profiling.profile",
+    "profile": "ringwright.profiling.profile",
     "ScanTable": "ringwright.scanning.table",
     "scan": "ringwright.scanning",
     "Comparison": "ringwright.comparing",

@@ -35,6 +35,7 @@ class Spacing:
 
     Attributes
     ----------
+    order : int
     position_angle : array (p,)
         Of the baseline, that is of the diameter [rad].
     diameter, error : arrays (p,)
@@ -45,6 +46,7 @@ class Spacing:
         Why there is none; empty where there is.
     """
 
+    order: int
     position_angle: Array
     diameter: Array
     error: Array
@@ -81,7 +83,7 @@ def ring_diameters(
     blank = np.full(position_angle.size, np.nan)
     if not last - first > FEWEST_MINIMA * view.fringe:
         return Spacing(
-            position_angle, blank, blank, first, max(last, first), _too_few(order, thin, longest, view)
+            order, position_angle, blank, blank, first, max(last, first), _too_few(order, thin, longest, view)
         )
     count = math.ceil((last - first) / view.fringe * PER_FRINGE) + 1
     baseline = np.linspace(first, last, count)
@@ -91,7 +93,7 @@ def ring_diameters(
     amplitude = np.abs(sum(seen(part, view, baseline, half_turn) for part in mine))
     fitted = np.array([_spacing(minima(baseline, row)[0]) for row in amplitude])[place]
     diameter = 1.0 / (fitted[:, 0] * view.theta_g)
-    return Spacing(position_angle, diameter, diameter * fitted[:, 1] / fitted[:, 0], first, last, "")
+    return Spacing(order, position_angle, diameter, diameter * fitted[:, 1] / fitted[:, 0], first, last, "")
 
 
 def _too_few(order: int, thin: float, longest: float, view: View) -> str:

@@ -1,35 +1,46 @@
 """The command line: one verb per job, results on standard output, log and progress on standard error.
 
-Exit status: 0 done, 1 failure, 2 bad input or usage, 3 finished with failed scenes, 130 interrupted. Each verb's work is
-imported when it is asked for, so that `--help` costs next to nothing.
+Exit status: 0 done, 1 failure, 2 bad input or usage, 3 finished with failed scenes, 130 interrupted, 141 when nobody reads
+the results any more. Each verb's work is imported when it is asked for, so that `--help` costs next to nothing.
 """
 
 from __future__ import annotations
 
 import argparse
 import json
+import os
 import sys
 from collections.abc import Sequence
+from difflib import get_close_matches
 from importlib import import_module
 
 from ringwright import __version__
 from ringwright.errors import InputError
 
-DONE, FAILURE, BAD_INPUT, SOME_FAILED, INTERRUPTED = 0, 1, 2, 3, 130
+DONE, FAILURE, BAD_INPUT, SOME_FAILED, INTERRUPTED, UNREAD = 0, 1, 2, 3, 130, 141
+# A scan is written when it is whole; everything else that is interrupted is made again in seconds.
+LOST = {"scan": "the scenes done so far are not kept, and "}
 
 
 def main(arguments: Sequence[str] | None = None) -> int:
     """Run one verb and return the exit status."""
-    options = _parser().parse_args(arguments)
-    verb = getattr(import_module("ringwright.verbs"), options.verb)
+    options = _options(arguments)
     try:
-        return int(verb(options))
+        verb = getattr(import_module("ringwright.verbs"), options.verb)
+        status = int(verb(options))
+        sys.stdout.flush()
+        return status
     except InputError as problem:
         print(f"ringwright {options.verb}: {problem}", file=sys.stderr)
         return BAD_INPUT
     except KeyboardInterrupt:
-        print(f"ringwright {options.verb}: interrupted; nothing was overwritten", file=sys.stderr)
+        lost = LOST.get(options.verb, "")
+        print(f"ringwright {options.verb}: interrupted; {lost}nothing was overwritten", file=sys.stderr)
         return INTERRUPTED
+    except BrokenPipeError:
+        # What Python still holds for standard output has no reader; without this it would complain at its end.
+        os.dup2(os.open(os.devnull, os.O_WRONLY), sys.stdout.fileno())
+        return UNREAD
     except OSError as problem:
         print(f"ringwright {options.verb}: {problem.filename or ''}: {problem.strerror}", file=sys.stderr)
         return FAILURE
@@ -40,7 +51,19 @@ def print_json(value: object) -> None:
     print(json.dumps(value, indent=2, ensure_ascii=False, allow_nan=False))
 
 
-def _parser() -> argparse.ArgumentParser:
+def _options(arguments: Sequence[str] | None) -> argparse.Namespace:
+    """What was asked for; something not understood is told with the usage of its verb."""
+    parser, verbs = _parser()
+    options, rest = parser.parse_known_args(arguments)
+    if rest:
+        verb = verbs.choices[options.verb]
+        known = [name for name in verb.format_help().replace("[", " ").split() if name.startswith("--")]
+        near = get_close_matches(rest[0], known, 1)
+        verb.error(f"not understood: {' '.join(rest)}" + (f"; did you mean {near[0]}?" if near else ""))
+    return options
+
+
+def _parser() -> tuple[argparse.ArgumentParser, argparse._SubParsersAction[argparse.ArgumentParser]]:
     parser = argparse.ArgumentParser(
         prog="ringwright",
         description="From a measured ring to an angular gravitational radius and a mass with a named error.",
@@ -56,7 +79,7 @@ def _parser() -> argparse.ArgumentParser:
     verbs.add_parser(
         "schema", help="print the JSON Schema of scene files, for editors that complete and check"
     )
-    return parser
+    return parser, verbs
 
 
 def _add_render(verbs: argparse._SubParsersAction[argparse.ArgumentParser]) -> None:
@@ -88,22 +111,33 @@ def _add_measure(verbs: argparse._SubParsersAction[argparse.ArgumentParser]) -> 
         default="relative",
         help="lengths of the estimator in units of the diameter, or the published ones in uas",
     )
-    parser.add_argument("--picture", action="store_true", help="draw the ring found on each image (PNG)")
-    _add_common(parser, "no table; with --picture, outputs/<image>-ring.png")
+    parser.add_argument(
+        "--picture",
+        action="store_true",
+        help="draw the ring found on each image (outputs/<image>-ring.png)",
+    )
+    _add_common(
+        parser,
+        "none",
+        "replace the table that stands there, and foreign pictures",
+        "write a table of the rings (ECSV)",
+    )
 
 
 def _add_scan(verbs: argparse._SubParsersAction[argparse.ArgumentParser]) -> None:
     parser = verbs.add_parser("scan", help="render and read every scene that a scan file asks for")
     parser.add_argument("scan", help="scan file (TOML)")
     parser.add_argument("--workers", type=int, help="processes; all the cores unless given")
-    _add_common(parser, "outputs/<scan name>.h5")
+    _add_common(
+        parser, "outputs/<scan name>.h5", "replace whatever stands there; without it a finished scan is kept"
+    )
 
 
 def _add_compare(verbs: argparse._SubParsersAction[argparse.ArgumentParser]) -> None:
     parser = verbs.add_parser("compare", help="the mass that an observed ring allows, given scans of scenes")
     parser.add_argument("observation", help="observation file (TOML)")
     parser.add_argument("scans", nargs="+", metavar="SCAN_PRODUCT")
-    _add_common(parser, "figures in outputs/<observation name>-*.png")
+    _add_common(parser, "outputs/<observation name>", out="beginning of the names OUT.txt and OUT-*.png")
 
 
 def _add_new(verbs: argparse._SubParsersAction[argparse.ArgumentParser]) -> None:
@@ -113,9 +147,14 @@ def _add_new(verbs: argparse._SubParsersAction[argparse.ArgumentParser]) -> None
     parser.add_argument("--replace", action="store_true", help="replace the file if it exists")
 
 
-def _add_common(parser: argparse.ArgumentParser, default: str) -> None:
-    parser.add_argument("--out", help=f"where the result goes (default: {default})")
-    parser.add_argument("--replace", action="store_true", help="replace whatever stands there")
+def _add_common(
+    parser: argparse.ArgumentParser,
+    default: str,
+    replace: str = "replace also a file that is not an earlier result of the same name",
+    out: str = "where the result goes",
+) -> None:
+    parser.add_argument("--out", help=f"{out} (default: {default})")
+    parser.add_argument("--replace", action="store_true", help=replace)
     parser.add_argument("--json", action="store_true", help="print the result as one JSON object")
 
 

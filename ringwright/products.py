@@ -1,8 +1,8 @@
 """Files that survive: products are written beside their target and renamed, and carry what made them.
 
 A reader sees the old file or the new one, never half of one. A file that is not our product of the same
-name is never replaced unless the caller says so. The same input gives the same bytes: no time, host or
-process number is stored.
+name is never replaced unless the caller says so, and `differences` tells whether that product was made of the
+same input. The same input gives the same bytes: no time, host or process number is stored.
 """
 
 from __future__ import annotations
@@ -31,6 +31,13 @@ OUTPUTS = Path("outputs")
 # Pictures and FITS files say in their first bytes who wrote them and for what name.
 MARK = b"ringwright"
 HEAD_BYTES = 8192
+# What made a product, as people call it; two products that agree in all of it are the same.
+MADE_OF = {
+    "source_text": "its file",
+    "resolved": "the scene that it starts from",
+    "tables": "a table of brightness that it reads",
+    "versions": "the versions of ringwright and its libraries",
+}
 
 
 def default_output(name: str, suffix: str) -> Path:
@@ -62,6 +69,14 @@ def check_target(path: str | Path, kind: str, name: str, *, replace: bool) -> Pa
             f"{target} exists and is {what}, so it is kept; name another file with --out, or say --replace"
         )
     return target
+
+
+def differences(path: str | Path, provenance: dict[str, Any]) -> list[str]:
+    """In words, what made the product at a path that is not what `provenance` says; [] for the same."""
+    with h5py.File(path, "r", locking="best-effort") as file:
+        return [
+            words for key, words in MADE_OF.items() if str(file.attrs.get(key, "")) != provenance.get(key, "")
+        ]
 
 
 def check_companion(path: str | Path, name: str, *, replace: bool) -> None:

@@ -83,8 +83,15 @@ def scan(options: argparse.Namespace) -> int:
     plan = load_scan(options.scan)
     _print_all("note", getattr(plan, "notices", ()))
     target = Path(options.out or products.default_output(plan.name, ".h5"))
-    with reporting(plan.name) as progress:
-        table = run_scan(plan, target, workers=options.workers, replace=options.replace, progress=progress)
+    table = already = None if options.replace else finished(plan, target)
+    if table is None:
+        with reporting(plan.name) as progress:
+            table = run_scan(
+                plan, target, workers=options.workers, replace=options.replace, progress=progress
+            )
+    else:
+        same = "made of the same scan file, base scene and versions; --replace computes it again"
+        _print_all("note", [f"{target} is this scan already, {same}"])
     failed = int((table.status == SCENE_FAILED).sum())
     rings = int(((table.outcome == 0).any(axis=1)).sum())
     if options.json:
@@ -95,7 +102,7 @@ def scan(options: argparse.Namespace) -> int:
             f"{table.name}: {len(table.status)} scenes, {rings} with a ring at some resolution, {failed} failed"
         )
         _print_all("failed", sorted({reason for reason in table.reason if reason}))
-        _print_all("wrote", [target])
+        _print_all("wrote" if already is None else "kept", [target])
     return SOME_FAILED if failed else DONE
 
 
@@ -110,6 +117,7 @@ def compare(options: argparse.Namespace) -> int:
     stem = Path(options.out) if options.out else products.default_output(observation.name, "")
     for target in targets(stem):
         products.check_companion(target, observation.name, replace=options.replace)
+    from ringwright.scanning.finished import finished
     answer = compare_ring(observation, *options.scans)
     written = draw_comparison(answer, stem)
     if options.json:

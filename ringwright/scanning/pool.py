@@ -2,6 +2,7 @@
 
 Workers are spawned, not forked, because a fork after a threaded kernel kills them; a spawned worker would import the caller's
 `__main__`, so that is hidden while the pool lives. Workers run serial kernels: their thread counts are set in the environment.
+An interruption is the parent's alone: workers never hear of it, and are ended at once when it comes.
 """
 
 from __future__ import annotations
@@ -10,6 +11,7 @@ import multiprocessing
 import os
 import signal
 import sys
+import threading
 from collections.abc import Callable, Iterable, Iterator
 from concurrent.futures import FIRST_COMPLETED, Executor, Future, ProcessPoolExecutor, wait
 from contextlib import contextmanager
@@ -37,10 +39,19 @@ def process_pool(
             initializer=_start,
             initargs=(initializer, initargs),
         )
+        before = set(multiprocessing.active_children())
         try:
+            with _deaf():  # a process keeps ignoring what was ignored when it was started
+                for _ in range(workers):
+                    pool.submit(int)
             yield pool
-        finally:
-            pool.shutdown(wait=True, cancel_futures=True)
+        except BaseException:
+            with _deaf():  # a second interruption must not cut this short
+                for worker in set(multiprocessing.active_children()) - before:
+                    worker.terminate()
+                pool.shutdown(wait=True, cancel_futures=True)
+            raise
+        pool.shutdown(wait=True, cancel_futures=True)
 
 
 def results(pool: Executor, function: Callable[[Any], Any], tasks: Iterable[Any]) -> Iterator[Any]:
@@ -59,9 +70,22 @@ def results(pool: Executor, function: Callable[[Any], Any], tasks: Iterable[Any]
 
 
 def _start(initializer: Callable[..., None], initargs: tuple[Any, ...]) -> None:
-    """A worker leaves interruptions to its parent."""
+    """A worker that was started from another thread than the main one hears no interruptions from here on."""
     signal.signal(signal.SIGINT, signal.SIG_IGN)
     initializer(*initargs)
+
+
+@contextmanager
+def _deaf() -> Iterator[None]:
+    """Interruptions are ignored meanwhile; only the main thread may ask for that."""
+    if threading.current_thread() is not threading.main_thread():
+        yield
+        return
+    before = signal.signal(signal.SIGINT, signal.SIG_IGN)
+    try:
+        yield
+    finally:
+        signal.signal(signal.SIGINT, before)
 
 
 @contextmanager

@@ -22,6 +22,7 @@ from ringwright.rendering import render
 from ringwright.ring.readings import Readings, readings
 from ringwright.scanfile import ScanPlan, load_scan
 from ringwright.scanning.drawing import draw
+from ringwright.scanning.finished import finished, made_of
 from ringwright.scanning.pool import process_pool, results
 from ringwright.scanning.table import KIND, SCENE_DONE, SCENE_FAILED, ScanParameter, ScanTable
 
@@ -60,7 +61,8 @@ def scan(
     workers : int, optional
         Processes; default all the cores that this process may use. 1 runs in this process.
     replace : bool
-        Replace whatever the target holds.
+        Replace whatever the target holds. Without it, a target that holds this very scan (same file, base scene
+        and versions) is read instead of computed again.
     progress : callable, optional
         Called with scenes done, scenes asked for and scenes failed.
 
@@ -71,7 +73,7 @@ def scan(
     Raises
     ------
     InputError
-        If the scan file or the target cannot be used, or a scene has an absolute scale.
+        If the scan file cannot be used, the target holds something else, or a scene has an absolute scale.
     """
     if not isinstance(plan, ScanPlan):
         plan = load_scan(plan)
@@ -84,7 +86,10 @@ def scan(
             "r/theta_g alone; scan scenes given by dimensionless numbers"
         )
     target = products.default_output(plan.name, ".h5") if out is None else Path(out)
-    products.check_target(target, KIND, plan.name, replace=replace)
+    if replace:
+        products.check_target(target, KIND, plan.name, replace=True)
+    elif (table := finished(plan, target)) is not None:
+        return table
     drawn = draw(plan)
     rows: list[Row | None] = [None] * len(drawn)
     failed = 0
@@ -94,7 +99,7 @@ def scan(
         if progress is not None:
             progress(done, len(drawn), failed)
     table = _table(plan, drawn, [row for row in rows if row is not None])
-    table.save(target, replace=replace)
+    table.save(target, replace=True)  # the target was free, or to be replaced, before the work
     return table
 
 
@@ -180,5 +185,5 @@ def _table(plan: ScanPlan, drawn: list[tuple[Any, ...]], rows: list[Row]) -> Sca
             [np.nan if row.readings is None else row.readings.halfway_error for row in rows]
         ),
         base=plan.base.resolved(),
-        provenance=products.provenance(plan.text, plan.base.resolved(), seed=plan.seed, method=plan.method),
+        provenance=made_of(plan),
     )

@@ -17,6 +17,7 @@ import numpy as np
 from numpy.typing import NDArray
 
 from ringwright import products
+from ringwright.errors import InputError
 
 KIND = "scan"
 Array = NDArray[np.float64]
@@ -85,9 +86,14 @@ class ScanTable:
         Raises
         ------
         InputError
-            If the path holds something else than a scan of this name and `replace` is not set.
+            If the path holds something else than this scan, made of the same input, and `replace` is not set.
         """
         target = products.check_target(path, KIND, self.name, replace=replace)
+        if target.exists() and not replace and (other := products.differences(target, self.provenance)):
+            raise InputError(
+                f"{target} holds another scan named '{self.name}', which differs in {', '.join(other)}, so it is "
+                "kept; name another file, or ask for it to be replaced"
+            )
         products.write_product(target, KIND, self.name, self._fill, self.provenance)
         return target
 

@@ -160,6 +160,25 @@ def test_from_starter_files_to_a_mass(capsys, monkeypatch, tmp_path):
     assert len(list((tmp_path / "outputs").glob("my-observation-*.png"))) == 3
 
 
+def test_a_finished_scan_is_kept_and_said_to_be_there(scene, capsys, tmp_path):
+    (tmp_path / "scan.toml").write_text(SCAN.replace("SCENE", "seen.toml"))
+    assert main(["scan", "scan.toml", "--workers", "1"]) == 0
+    before = (tmp_path / "outputs" / "few.h5").read_bytes()
+    capsys.readouterr()
+    assert main(["scan", "scan.toml"]) == 0
+    captured = capsys.readouterr()
+    assert "few.h5 is this scan already" in captured.err
+    assert "few: 4 scenes" in captured.out
+    (tmp_path / "scan.toml").write_text(
+        SCAN.replace("SCENE", "seen.toml").replace("scenes = 4", "scenes = 2")
+    )
+    said = refused(capsys, "scan", "scan.toml")
+    assert "few.h5 holds a finished scan of the same name, 'few', that differs in its file" in said
+    assert "--replace" in said
+    assert (tmp_path / "outputs" / "few.h5").read_bytes() == before
+    assert main(["scan", "scan.toml", "--workers", "1", "--replace"]) == 0
+
+
 def test_a_scan_product_that_cannot_be_read_is_refused(scene, capsys, tmp_path):
     (tmp_path / "scan.toml").write_text(SCAN.replace("SCENE", "seen.toml"))
     assert main(["scan", "scan.toml", "--workers", "1", "--json"]) == 0
@@ -187,6 +206,22 @@ def test_help_version_and_schema(capsys):
     with pytest.raises(SystemExit) as stop:
         main(["polish"])
     assert stop.value.code == 2
+
+
+def test_a_misspelt_option_is_told_with_the_usage_of_its_verb(capsys):
+    with pytest.raises(SystemExit) as stop:
+        main(["compare", "--replce", "o.toml", "scan.h5"])
+    assert stop.value.code == 2
+    said = capsys.readouterr().err
+    assert said.startswith("usage: ringwright compare")
+    assert "not understood: --replce; did you mean --replace?" in said
+
+
+def test_results_that_nobody_reads_end_quietly():
+    code = "import sys; from ringwright.cli import main; sys.exit(main(['schema']))"
+    shell = f'"{sys.executable}" -c "{code}"; echo $? >&2'
+    run = subprocess.run(["sh", "-c", f"({shell}) | true"], capture_output=True, text=True, check=False)
+    assert run.stderr.strip() in ("0", "141")
 
 
 def test_render_imports_nothing_heavy_that_it_does_not_need(scene):

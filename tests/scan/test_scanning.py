@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import dataclasses
 import subprocess
 import sys
 from pathlib import Path
@@ -15,6 +16,7 @@ from ringwright.errors import InputError
 from ringwright.scanfile import load_scan
 from ringwright.scanning import running
 from ringwright.scanning.drawing import draw
+from ringwright.scanning.finished import made_of
 
 BASE = """
 name = "base"
@@ -142,6 +144,75 @@ def test_the_target_is_checked_before_the_work_starts(plan, tmp_path, monkeypatc
     with pytest.raises(InputError, match="at least one worker"):
         rw.scan(plan, out=tmp_path / "a.h5", workers=0)
     assert other.read_text() == "precious"
+
+
+def test_the_same_scan_is_read_and_not_computed_again(plan, alone, monkeypatch):
+    monkeypatch.setattr(running, "render", None)
+    again = rw.scan(plan, out=plan.parent / "alone.h5", workers=1)
+    np.testing.assert_array_equal(again.diameter, alone.diameter)
+
+
+@pytest.mark.parametrize(
+    ("file", "old", "new", "said"),
+    [
+        ("small.toml", "scenes = 8", "scenes = 4", "differs in its file;"),
+        ("base.toml", 'outer = "30 M"', 'outer = "31 M"', "differs in the scene that it starts from;"),
+    ],
+)
+def test_a_scan_of_the_same_name_and_other_content_is_kept(
+    plan, alone, tmp_path, monkeypatch, file, old, new, said
+):
+    monkeypatch.setattr(running, "render", None)
+    for name, text in (("base.toml", BASE), ("small.toml", SCAN)):
+        (tmp_path / name).write_text(text.replace(old, new) if name == file else text, encoding="utf-8")
+    product = plan.parent / "alone.h5"
+    before = product.read_bytes()
+    with pytest.raises(InputError, match=said):
+        rw.scan(tmp_path / "small.toml", out=product, workers=1)
+    with pytest.raises(InputError, match="differs in its file"):
+        dataclasses.replace(alone, provenance={**alone.provenance, "source_text": "other"}).save(product)
+    assert product.read_bytes() == before
+
+
+def test_a_scan_of_an_edited_table_of_brightness_is_another_scan(tmp_path):
+    base = BASE.replace(
+        'kind = "power-law", inner = "3 M", outer = "30 M", slope = 4.0', 'kind = "table", file = "light.csv"'
+    )
+    scan = SCAN.replace("emitter.profile.inner", "view.inclination").replace(
+        '["2 M", "4 M"]', '["10 deg", "20 deg"]'
+    )
+    (tmp_path / "base.toml").write_text(base, encoding="utf-8")
+    (tmp_path / "small.toml").write_text(scan, encoding="utf-8")
+    made = []
+    for outermost in (20.0, 21.0):
+        (tmp_path / "light.csv").write_text(f"3.0, 1.0\n6.0, 0.5\n{outermost}, 0.0\n", encoding="utf-8")
+        made.append(made_of(load_scan(tmp_path / "small.toml")))
+    assert [key for key in made[0] if made[0][key] != made[1][key]] == ["tables"]
+
+
+INTERRUPTED = """
+import os, signal
+from ringwright.scanning.pool import process_pool, results
+try:
+    with process_pool(2, int, ()) as pool:
+        for done in results(pool, abs, [-1] * 1000):
+            os.killpg(0, signal.SIGINT)
+except KeyboardInterrupt:
+    print("interrupted", flush=True)
+"""
+
+
+def test_an_interruption_ends_the_workers_without_a_word(plain_environment):
+    run = subprocess.run(
+        [sys.executable, "-c", INTERRUPTED],
+        capture_output=True,
+        text=True,
+        env=plain_environment,
+        start_new_session=True,
+        timeout=60,
+        check=False,
+    )
+    assert (run.stdout, run.stderr, run.returncode) == ("interrupted\n", "", 0)
 
 
 def test_a_truncated_product_is_refused_in_one_sentence(plan, alone, tmp_path):

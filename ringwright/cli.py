@@ -72,6 +72,7 @@ def _parser() -> tuple[argparse.ArgumentParser, argparse._SubParsersAction[argpa
     parser.add_argument("--version", action="version", version=f"ringwright {__version__}")
     verbs = parser.add_subparsers(dest="verb", required=True, metavar="VERB")
     _add_render(verbs)
+    _add_profile(verbs)
     _add_measure(verbs)
     _add_scan(verbs)
     _add_compare(verbs)
@@ -92,6 +93,42 @@ def _add_render(verbs: argparse._SubParsersAction[argparse.ArgumentParser]) -> N
     )
     parser.add_argument("--fits", action="store_true", help="also write a FITS image with a celestial WCS")
     _add_common(parser, "outputs/<scene name>.h5")
+
+
+def _add_profile(verbs: argparse._SubParsersAction[argparse.ArgumentParser]) -> None:
+    parser = verbs.add_parser(
+        "profile",
+        help="resolve the photon rings of a scene: cuts, widths, fluxes, delays and visibilities per order",
+    )
+    parser.add_argument("scene", help="scene file (TOML)")
+    parser.add_argument("--orders", type=int, default=5, help="how many orders, from n = 0 (default: 5)")
+    parser.add_argument(
+        "--position-angle",
+        action="append",
+        default=[],
+        metavar="ANGLE",
+        help='direction of cuts and baselines, such as "30 deg", east of north; again for more (default: along the '
+        "disk's projected axis and across it)",
+    )
+    parser.add_argument(
+        "--angles", type=int, default=64, help="position angles of the table of rings (default: 64)"
+    )
+    parser.add_argument("--longest", default="1000 Glambda", help="longest baseline (default: 1000 Glambda)")
+    parser.add_argument(
+        "--sensitivity", default="1 mJy", help="flux density below which order 1 is not seen (default: 1 mJy)"
+    )
+    parser.add_argument(
+        "--emitting-radius",
+        metavar="RADIUS",
+        help='circle whose images tell rotation and delay, such as "6 M" (default: the one that holds half of order 0)',
+    )
+    parser.add_argument(
+        "--accuracy",
+        type=float,
+        default=1e-7,
+        help="interpolation error of brightness allowed (default: 1e-7)",
+    )
+    _add_common(parser, "outputs/<scene name>-profile.h5")
 
 
 def _add_measure(verbs: argparse._SubParsersAction[argparse.ArgumentParser]) -> None:

@@ -42,6 +42,39 @@ def render(options: argparse.Namespace) -> int:
     return DONE
 
 
+def profile(options: argparse.Namespace) -> int:
+    """Resolve the photon rings of a scene; write the product and its figures."""
+    from ringwright.figures.profile import draw_profile, targets
+    from ringwright.profiling.product import KIND
+    from ringwright.profiling.profile import profile as profile_scene
+    from ringwright.profiling.wording import describe
+    from ringwright.scenes import load_scene
+
+    scene = load_scene(options.scene)
+    target = Path(options.out or products.default_output(f"{scene.name}-profile", ".h5"))
+    products.check_target(target, KIND, scene.name, replace=options.replace)
+    for picture in targets(target.with_suffix("")):
+        products.check_companion(picture, scene.name, replace=options.replace)
+    found = profile_scene(
+        scene,
+        orders=options.orders,
+        position_angles=options.position_angle,
+        angles=options.angles,
+        longest=options.longest,
+        sensitivity=options.sensitivity,
+        emitting_radius=options.emitting_radius,
+        accuracy=options.accuracy,
+    )
+    written = [found.save(target, replace=options.replace), *draw_profile(found, target.with_suffix(""))]
+    if options.json:
+        print_json({**found.summary(), "files": [str(path) for path in written]})
+        return DONE
+    print(describe(found))
+    _print_all("note", found.notes)
+    _print_all("wrote", written)
+    return DONE
+
+
 def measure(options: argparse.Namespace) -> int:
     """Measure the ring on one or many images."""
     from ringwright.ring.measuring import measure as measure_ring
@@ -77,6 +110,7 @@ def scan(options: argparse.Namespace) -> int:
     """Run a scan."""
     from ringwright.progress import reporting
     from ringwright.scanfile import load_scan
+    from ringwright.scanning.finished import finished
     from ringwright.scanning.running import scan as run_scan
     from ringwright.scanning.table import SCENE_FAILED
 
@@ -117,7 +151,6 @@ def compare(options: argparse.Namespace) -> int:
     stem = Path(options.out) if options.out else products.default_output(observation.name, "")
     for target in targets(stem):
         products.check_companion(target, observation.name, replace=options.replace)
-    from ringwright.scanning.finished import finished
     answer = compare_ring(observation, *options.scans)
     written = draw_comparison(answer, stem)
     if options.json:

@@ -30,6 +30,8 @@ LASTING = 2.0
 # Null: a minimum of the amplitude below this share of the envelope.
 NULL_DEPTH = 0.2
 MOST_NULLS = 20
+# Baselines on which each null is looked at again, within one step to either side.
+CLOSER = 33
 
 
 @dataclass(frozen=True)
@@ -174,13 +176,36 @@ def trusted_baseline(found: Fringes, share: float) -> float:
     return float(found.baseline[np.argmax(wrong) - 1] if wrong.any() else found.baseline[-1])
 
 
-def nulls(found: Fringes, row: int) -> tuple[Array, Array]:
-    """Baselines [wavelengths] of the first nulls of the total along one direction, and |V| there over the envelope."""
-    amplitude = np.abs(found.total[row])
-    place, least = minima(found.baseline, amplitude)
-    depth = least / np.interp(place, found.baseline, found.total_envelope[row])
-    deep = np.flatnonzero(depth < NULL_DEPTH)[:MOST_NULLS]
-    return place[deep], depth[deep]
+def nulls(light: Sequence[SampledLight], view: View, found: Fringes, row: int) -> tuple[Array, Array]:
+    """The first nulls of the total along one direction, each looked at closely.
+
+    Parameters
+    ----------
+    light, view, found
+        What `fringes` was given, and what it returned.
+    row : int
+        Of the direction.
+
+    Returns
+    -------
+    place, depth : arrays (m,)
+        Baselines [wavelengths], and the amplitude there over the envelope.
+    """
+    rough, least = minima(found.baseline, np.abs(found.total[row]))
+    envelope = np.interp(rough, found.baseline, found.total_envelope[row])
+    deep = np.flatnonzero(least < NULL_DEPTH * envelope)[:MOST_NULLS]
+    if not deep.size:
+        return np.empty(0), np.empty(0)
+    step = found.baseline[1] - found.baseline[0]
+    near = rough[deep, None] + step * np.linspace(-1.0, 1.0, CLOSER)
+    direction = found.position_angle[row : row + 1]
+    amplitude = np.abs(sum(seen(part, view, near.ravel(), direction)[0] for part in light)).reshape(
+        near.shape
+    )
+    closely = [minima(places, values) for places, values in zip(near, amplitude, strict=True)]
+    best = [(places[0], values[0]) if places.size else (math.nan, math.nan) for places, values in closely]
+    place, value = np.array(best).T
+    return place, value / envelope[deep]
 
 
 def minima(baseline: Array, amplitude: Array) -> tuple[Array, Array]:

@@ -188,7 +188,7 @@ def _directions(profile: Profile) -> list[dict[str, Any]]:
     if found is None:
         return []
     answers = []
-    for row, (places, depth) in enumerate(profile.nulls()):
+    for row, (places, depth) in enumerate(profile.nulls):
         answers.append(
             {
                 "position_angle": _quantity(math.degrees(found.position_angle[row]) % 180.0, "deg"),

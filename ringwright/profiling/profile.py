@@ -69,6 +69,8 @@ class Profile:
     rings : RingTable
     fringes : Fringes or None
         None where θ_g is unknown.
+    nulls : tuple of (array, array)
+        Per direction: the first nulls of the total [wavelengths], and the amplitude there over the envelope.
     spacings : tuple of Spacing
         Diameters by fringe spacing for orders 1 and 2.
     carriers : tuple of Carrier
@@ -90,6 +92,7 @@ class Profile:
     cut_angle: Array
     rings: RingTable
     fringes: Fringes | None
+    nulls: tuple[tuple[Array, Array], ...]
     spacings: tuple[Spacing, ...]
     carriers: tuple[Carrier, ...]
     first_sight: FirstSight | None
@@ -108,11 +111,6 @@ class Profile:
         from ringwright.profiling.product import summary
 
         return summary(self)
-
-    def nulls(self) -> list[tuple[Array, Array]]:
-        """Per direction: the first nulls of the total [wavelengths], and the amplitude there over the envelope."""
-        found = self.fringes
-        return [] if found is None else [nulls(found, row) for row in range(found.position_angle.size)]
 
 
 def profile(
@@ -173,6 +171,7 @@ def profile(
     view = _view(scene, scale)
     seen: dict[str, Any] = {
         "fringes": None,
+        "nulls": (),
         "spacings": (),
         "carriers": (),
         "first_sight": None,
@@ -290,6 +289,7 @@ def _seen(
     fringed = [order for order in FRINGED if order < scene.orders and rings.flux[order] > 0.0]
     return {
         "fringes": found,
+        "nulls": tuple(nulls(light, view, found, row) for row in range(directions.size)),
         "spacings": tuple(
             ring_diameters(
                 light,

@@ -80,7 +80,7 @@ def _baselines(profile: Profile) -> list[str]:
     if found is None:
         return []
     lines = []
-    for row, (places, _) in enumerate(profile.nulls()):
+    for row, (places, _) in enumerate(profile.nulls):
         lines.append(f"Baselines at position angle {math.degrees(found.position_angle[row]) % 180.0:.0f}°:")
         if places.size:
             shown = ", ".join(f"{place / 1e9:.4g}" for place in places[:5])

@@ -163,7 +163,7 @@ def profile(
     light = sample_light(scene, accuracy=accuracy)
     flux = _fluxes(scene, light)
     scale = (1.0 if scene.total_flux is None else float(scene.total_flux.to_value("Jy"))) / float(flux.sum())
-    radius = None if emitting_radius is None else _quantity(emitting_radius, "length", "the emitting radius")
+    radius = _emitting_radius(scene, emitting_radius)
     rings = ring_table(scene, light, count=angles, emitting_radius=radius, scale=scale)
     cut_angle = np.concatenate([directions, directions + math.pi])
     unit = "" if scene.total_flux is None else "Jy"
@@ -230,6 +230,18 @@ def _quantity(text: str, kind: str, what: str) -> float:
         return parse(str(text), kind)
     except ValueError as problem:
         raise InputError(f"{what}: {problem}") from None
+
+
+def _emitting_radius(scene: Scene, given: str | None) -> float | None:
+    if given is None:
+        return None
+    radius = _quantity(given, "length", "the emitting radius")
+    if not radius > scene.spacetime.horizon:
+        raise InputError(
+            f"an emitting radius of {radius:g} M is not outside the horizon at {scene.spacetime.horizon:g} M, from where no "
+            "light comes"
+        )
+    return radius
 
 
 def _sensitivity(text: str, unit: str) -> float:

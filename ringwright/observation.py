@@ -111,7 +111,7 @@ def load_observation(path: str | Path) -> Observation:
     SceneError
         With every problem of the file: line, key, what was given and what is accepted.
     """
-    document = read_document(path)
+    document = read_document(path, "observation")
     model, problems = examined(ObservationFile, document)
     reader = _Reader()
     diameter, distance = model.diameter, model.distance

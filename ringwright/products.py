@@ -22,6 +22,7 @@ import numpy as np
 
 from ringwright import __version__
 from ringwright.errors import InputError
+from ringwright.kinds import article, mistaken
 
 FORMAT_VERSION = 1
 # Chunks and compression of image data: small enough to read a cut-out, strong enough to catch a flipped bit.
@@ -31,6 +32,7 @@ OUTPUTS = Path("outputs")
 # Pictures and FITS files say in their first bytes who wrote them and for what name.
 MARK = b"ringwright"
 HEAD_BYTES = 8192
+MAKERS = {"scan": "`ringwright scan SCAN_FILE`", "image": "`ringwright render SCENE_FILE`"}
 # What made a product, as people call it; two products that agree in all of it are the same.
 MADE_OF = {
     "source_text": "its file",
@@ -64,7 +66,7 @@ def check_target(path: str | Path, kind: str, name: str, *, replace: bool) -> Pa
     except OSError:
         found = ("", "")
     if found != (kind, name):
-        what = f"a {found[0]} product of '{found[1]}'" if found[0] else "not a product of ringwright"
+        what = f"{article(found[0])} product of '{found[1]}'" if found[0] else "not a product of ringwright"
         raise InputError(
             f"{target} exists and is {what}, so it is kept; name another file with --out, or say --replace"
         )
@@ -148,18 +150,20 @@ def open_product(path: str | Path, kind: str) -> Iterator[h5py.File]:
     """
     path = Path(path)
     if not path.is_file():
-        raise InputError(f"there is no file {path}")
+        maker = MAKERS.get(kind, "")
+        raise InputError(
+            f"there is no file {path}" + (f"; {maker} writes {article(kind)} product" if maker else "")
+        )
     try:
         file = h5py.File(path, "r", locking="best-effort")
     except OSError as problem:
-        raise InputError(f"{path} is not a readable HDF5 file (truncated, or something else)") from problem
+        unreadable = f"{path} is not a readable HDF5 file (truncated, or something else)"
+        raise InputError(mistaken(path, f"{kind} product") or unreadable) from problem
     with file:
         found = str(file.attrs.get("product", ""))
         if found != kind:
-            raise InputError(
-                f"{path} is {'a ' + found + ' product' if found else 'not a product of ringwright'}; "
-                f"a {kind} product is needed here"
-            )
+            what = f"{article(found)} product" if found else "not a product of ringwright"
+            raise InputError(f"{path} is {what}; {article(kind)} product is needed here")
         if int(file.attrs.get("format_version", 0)) > FORMAT_VERSION:
             raise InputError(
                 f"{path} has format version {file.attrs['format_version']} and this ringwright reads up to "

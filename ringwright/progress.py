@@ -1,6 +1,7 @@
 """Progress on standard error: a bar on a terminal, elsewhere one plain line now and then.
 
-A batch log gets a line every 30 seconds or 5 %, whichever comes later, and always the last one; NO_COLOR is honoured by `rich`.
+A batch log gets a line after 5 seconds, then one every 30 seconds or 5 %, whichever comes later, and always the last one;
+NO_COLOR is honoured by `rich`.
 """
 
 from __future__ import annotations
@@ -10,6 +11,7 @@ import time
 from collections.abc import Callable, Iterator
 from contextlib import contextmanager
 
+FIRST_LINE_SECONDS = 5.0
 LINE_EVERY_SECONDS = 30.0
 LINE_EVERY_SHARE = 0.05
 
@@ -48,11 +50,13 @@ def _lines(what: str) -> Report:
     def show(done: int, total: int, failed: int) -> None:
         nonlocal last, shown
         now = time.monotonic()
+        first = shown == 0.0 and now - start >= FIRST_LINE_SECONDS
         due = now - last >= LINE_EVERY_SECONDS and done / total - shown >= LINE_EVERY_SHARE
-        if due or done == total:
+        if first or due or done == total:
             left = (now - start) / done * (total - done)
             note = f", {failed} failed" if failed else ""
-            print(f"{what}: {done} of {total}{note}, about {left:.0f} s left", file=sys.stderr, flush=True)
+            when = f"about {left:.0f} s left" if done < total else f"in {now - start:.0f} s"
+            print(f"{what}: {done} of {total}{note}, {when}", file=sys.stderr, flush=True)
             last, shown = now, done / total
 
     return show

@@ -132,7 +132,7 @@ def load_scan(path: str | Path) -> ScanPlan:
     SceneError
         With every problem of the file: line, key, what was given and what is accepted.
     """
-    document = read_document(path)
+    document = read_document(path, "scan")
     model, found = examined(ScanFile, document)
     base = _base(model.scene, document, found)
     drawn = [

@@ -67,17 +67,17 @@ def compare(
     Raises
     ------
     InputError
-        For files that cannot be read, priors that exclude every scene or say the same thing twice, and no
-        scan at all.
+        For files that cannot be read, priors that exclude every scene or say the same thing twice, a scan
+        given twice, and no scan at all.
     """
-    from ringwright.comparing.loading import read_observation, read_scan
+    from ringwright.comparing.loading import read_observation, read_scans
 
     if not scans:
         raise InputError(
             "a comparison needs at least one scan: give the product of `ringwright scan` after the "
             "observation"
         )
-    tables = tuple(read_scan(item) for item in scans)
+    tables = read_scans(scans)
     return compare_numbers(read_observation(observation, tables), tables)
 
 

@@ -81,7 +81,7 @@ def of_observation(observed: Observed) -> list[Caution]:
             f"At a resolution of {widest:.3g} µas a ring that reads {observed.diameter.mode:.3g} µas is "
             "hardly resolved: even one "
             "of zero width reads its diameter at least 18 % too small.",
-            f"Ask for a resolution finer than {0.5 * observed.diameter.mode:.2g} µas, or for a diameter "
+            f"Ask for a resolution finer than {RESOLVED * observed.diameter.mode:.2g} µas, or for a diameter "
             "fitted to the visibilities.",
         )
     ]

@@ -7,6 +7,7 @@ masses solar masses, scene parameters the unit of the scan (M, rad or none).
 from __future__ import annotations
 
 from collections.abc import Sequence
+from dataclasses import replace
 from os import PathLike
 
 from ringwright.comparing.distributions import TwoPiece
@@ -16,9 +17,30 @@ from ringwright.observation import Measurement, Observation, load_observation
 from ringwright.scanning.table import ScanTable
 
 
-def read_scan(scan: ScanTable | str | PathLike[str]) -> ScanTable:
-    """A scan table, or the one in a product."""
-    return scan if isinstance(scan, ScanTable) else ScanTable.open(str(scan))
+def read_scans(scans: Sequence[ScanTable | str | PathLike[str]]) -> tuple[ScanTable, ...]:
+    """Scan tables, or those in products; families that share a name get that of their scan beside it.
+
+    Raises
+    ------
+    InputError
+        For a scan that is given twice: it would count with twice the prior weight.
+    """
+    tables = tuple(scan if isinstance(scan, ScanTable) else ScanTable.open(str(scan)) for scan in scans)
+    for index, table in enumerate(tables):
+        if any(_same(table, other) for other in tables[:index]):
+            raise InputError(
+                f"the scan {table.path or table.name} is given twice and would count with twice the prior weight; "
+                "give each scan once"
+            )
+    names = [table.family for table in tables]
+    return tuple(
+        replace(table, family=f"{table.family} ({table.name})") if names.count(table.family) > 1 else table
+        for table in tables
+    )
+
+
+def _same(one: ScanTable, other: ScanTable) -> bool:
+    return one is other or (bool(one.provenance) and dict(one.provenance) == dict(other.provenance))
 
 
 def read_observation(

@@ -19,6 +19,7 @@ from numpy.typing import NDArray
 
 from ringwright.errors import InputError
 from ringwright.fits import SkyImage, read_fits
+from ringwright.kinds import mistaken
 from ringwright.ring.estimator import (
     DYNAMIC_RANGE,
     PIXELS_PER_FWHM,
@@ -216,6 +217,8 @@ def open_image(path: str | Path) -> Any:
     with path.open("rb") as file:
         start = file.read(len(HDF5_START))
     if start != HDF5_START:
+        if found := mistaken(path, "image"):
+            raise InputError(found)
         return read_fits(path)
     from ringwright.image import Image
 

@@ -19,4 +19,4 @@ def load_scene(path: str | Path) -> Scene:
     SceneError
         With every problem of the file: its line, its key, what was given and what is accepted.
     """
-    return scene_from(read_document(path))
+    return scene_from(read_document(path, "scene"))

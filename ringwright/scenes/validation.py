@@ -16,12 +16,20 @@ from typing import Any, TypeVar, get_args, get_origin
 from pydantic import BaseModel, TypeAdapter, ValidationError
 from pydantic.fields import FieldInfo
 
+from ringwright.kinds import (
+    FITS_START,
+    HDF5_START,
+    LARGEST_TEXT,
+    article,
+    kind_of_bytes,
+    kind_of_keys,
+    use_of,
+)
 from ringwright.scenes.errors import Problem, SceneError, did_you_mean
 from ringwright.scenes.lines import Path, key_lines
 from ringwright.units import shown
 
 Model = TypeVar("Model", bound=BaseModel)
-LARGEST_FILE = 2**22
 
 
 class Document:
@@ -59,14 +67,27 @@ class Document:
         return SceneError(self.problem(path, text) for path, text in found)
 
 
-def read_document(path: str | FilePath) -> Document:
-    """Read a TOML file.
+def read_document(path: str | FilePath, kind: str = "") -> Document:
+    """Read a TOML file that is due to be a "scene", "scan" or "observation" file.
 
     Raises
     ------
     SceneError
-        If there is no such file, or it is not TOML.
+        If there is no such file, it is not TOML, or its keys are those of another kind of file.
     """
+    document = _document(path, kind)
+    found = kind_of_keys(document.data)
+    if kind and found and found != kind:
+        raise _another_kind(str(path), found, kind)
+    return document
+
+
+def _another_kind(name: str, found: str, kind: str) -> SceneError:
+    due = article(f"{kind} file" if kind else "file of settings")
+    return SceneError([Problem(name, None, "", f"this is {use_of(found, name)}. Here {due} is due")])
+
+
+def _document(path: str | FilePath, kind: str) -> Document:
     name = str(path)
     try:
         raw = FilePath(path).read_bytes()
@@ -75,7 +96,9 @@ def read_document(path: str | FilePath) -> Document:
         raise SceneError([Problem(name, None, "", f"cannot be read: {reason}")]) from None
     except ValueError as problem:  # a null character in the name
         raise SceneError([Problem(name, None, "", f"cannot be read: {problem}")]) from None
-    if len(raw) > LARGEST_FILE:
+    if raw.startswith((HDF5_START, FITS_START)):
+        raise _another_kind(name, kind_of_bytes(raw), kind)
+    if len(raw) > LARGEST_TEXT:
         raise SceneError([Problem(name, None, "", "is larger than 4 MiB and so is no file of this kind")])
     try:
         text = raw.decode("utf-8-sig")

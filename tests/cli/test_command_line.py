@@ -3,9 +3,11 @@
 from __future__ import annotations
 
 import json
+import re
 import subprocess
 import sys
 
+import h5py
 import numpy as np
 import pytest
 
@@ -193,6 +195,31 @@ def test_a_scan_product_that_cannot_be_read_is_refused(scene, capsys, tmp_path):
     assert "a scan product is needed" in refused(capsys, "compare", "o.toml", "outputs/seen.h5")
     assert "absent.h5" in refused(capsys, "compare", "o.toml", "absent.h5")
     assert not list((tmp_path / "outputs").glob("my-observation*"))
+
+
+@pytest.mark.parametrize(
+    ("arguments", "said"),
+    [
+        ("compare few.toml x.h5", "few.toml: this is a scan file: run `ringwright scan few.toml`"),
+        ("compare x.h5 o.toml", "HDF5 file: images go to `ringwright measure`"),
+        ("compare o.toml few.toml", "run `ringwright scan few.toml`.* a scan product is due"),
+        ("compare o.toml absent.h5", "no file absent.h5; `ringwright scan SCAN_FILE` writes a scan product"),
+        ("compare o.toml x.h5", "x.h5 is an image product; a scan product is needed"),
+        ("scan seen.toml", "seen.toml: this is a scene file: .* a scan file is due"),
+        ("scan o.toml", "o.toml: this is an observation file: .* a scan file is due"),
+        ("render few.toml", "this is a scan file: .* a scene file is due"),
+        ("measure seen.toml --resolution 20uas", "this is a scene file: .* an image is due"),
+    ],
+)
+def test_a_file_of_another_kind_is_named_and_its_use_told(scene, capsys, tmp_path, arguments, said):
+    (tmp_path / "few.toml").write_text(SCAN.replace("SCENE", "seen.toml"))
+    main(["new", "observation", "o.toml"])
+    with h5py.File("x.h5", "w") as file:
+        file.attrs["product"] = "image"
+    capsys.readouterr()
+    message = refused(capsys, *arguments.split())
+    assert re.search(said, message), message
+    assert message.count("\n") == 1
 
 
 def test_help_version_and_schema(capsys):

@@ -88,6 +88,20 @@ def test_a_prior_on_the_inclination_is_an_angle(observation):
         rw.compare(observation(bare), table)
 
 
+def test_a_scan_given_twice_is_refused(observation, tmp_path):
+    table = family_table(provenance={"resolved": "{}", "source_text": "name = 1"})
+    copies = [table.save(tmp_path / f"{name}.h5") for name in ("one", "two")]
+    with pytest.raises(InputError, match=r"two\.h5 is given twice"):
+        rw.compare(observation(), *copies)
+    with pytest.raises(InputError, match="given twice"):
+        rw.compare(observation(), table, table)
+
+
+def test_families_that_share_a_name_are_told_apart(observation):
+    answer = rw.compare(observation(), family_table(name="near"), family_table(name="far", seed=4))
+    assert [item.family for item in answer.families] == ["made up (near)", "made up (far)"]
+
+
 def test_a_comparison_needs_a_scan(observation):
     with pytest.raises(InputError, match="at least one scan"):
         rw.compare(observation())

@@ -7,7 +7,6 @@ ring; nothing is traced again. Distances in M, angles in radians, brightness in 
 
 from __future__ import annotations
 
-import itertools
 from collections.abc import Sequence
 from dataclasses import dataclass
 
@@ -16,11 +15,12 @@ from numpy.polynomial import legendre
 
 from raytrace.contract import Array
 from raytrace.series import trigonometric_weights
+from ringwright.errors import InputError
 from ringwright.sampling import SampledLight
 
 # Points between two corners of a cut: enough to draw a smooth curve through.
 POINTS = 24
-# Corners closer than this share of their distance are one.
+# Corners closer than this share of their distance are one: what rounding leaves between two names of one edge.
 SAME_CORNER = 1e-13
 
 
@@ -31,7 +31,7 @@ class Cut:
     Attributes
     ----------
     distance : array (n,)
-        [M], ascending; at a corner twice, so that a jump is drawn as one.
+        [M], ascending; at a corner twice, so that a jump is drawn as one, and so where the light begins and ends.
     intensity : array (orders, n)
         Of every order; the total is the sum.
     """
@@ -54,44 +54,86 @@ def radial_cut(light: Sequence[SampledLight], *, angle: float, orders: int) -> C
     angle : float
         Screen angle from +α [rad].
     orders : int
+
+    Returns
+    -------
+    Cut
+
+    Raises
+    ------
+    InputError
+        If some of the light comes from infinity and ends only where the field does.
     """
-    lines = [Line(part, angle) for part in light]
+    lines = [Lines(part, np.array([angle])) for part in light]
     marks = corners(lines)
-    distance = np.concatenate([np.linspace(low, high, POINTS) for low, high in itertools.pairwise(marks)])
-    middle = np.repeat(0.5 * (marks[1:] + marks[:-1]), POINTS)
+    marks = marks[np.concatenate([[True], np.isfinite(middles(marks)[:, 0])])]
+    distance = np.linspace(marks[:-1], marks[1:], POINTS, axis=1)
     intensity = np.zeros((orders, distance.size))
     for line in lines:
-        intensity[line.order] += line.brightness(distance, middle)
-    return Cut(distance, np.maximum(intensity, 0.0))
+        intensity[line.order] += line.brightness(distance, middles(marks)).ravel()
+    dark = np.zeros((orders, 1))
+    return Cut(
+        np.concatenate([marks[0], distance.ravel(), marks[-1]]),
+        np.concatenate([dark, np.maximum(intensity, 0.0), dark], axis=1),
+    )
 
 
-class Line:
-    """One order of one emitter along one screen angle."""
+class Lines:
+    """One order of one emitter along several screen angles.
 
-    def __init__(self, part: SampledLight, angle: float) -> None:
-        offsets, coefficients = part.series.at_angles(np.array([angle]))
+    Attributes
+    ----------
+    order : int
+    edges : array (panels + 1, n)
+        Of the panels [M].
+    coefficients : array (m, panels, n)
+        Legendre coefficients of the brightness across each panel.
+    fronts : list of arrays (2, n)
+        Inner and outer edge of each opaque crossing in front [M].
+    """
+
+    def __init__(self, part: SampledLight, angle: Array) -> None:
+        if part.boundless:
+            raise InputError(
+                "light from infinity (a backdrop) fills whatever field is drawn and has no profile of its own; leave it out"
+            )
+        offsets, coefficients = part.series.at_angles(angle)
         self.order = part.order
-        self.edges: Array = part.series.band.curve(np.array([angle])) + offsets[:, 0]
-        self.coefficients: Array = coefficients[:, :, 0]
-        self.fronts = [
-            (front @ trigonometric_weights(front.shape[1], np.array([angle])))[:, 0] for front in part.fronts
+        self.edges: Array = part.series.band.curve(angle) + offsets
+        self.coefficients: Array = np.moveaxis(coefficients, 1, 0)
+        self.fronts: list[Array] = [
+            front @ trigonometric_weights(front.shape[1], angle) for front in part.fronts
         ]
 
-    def brightness(self, distance: Array, inside: Array) -> Array:
-        """Brightness at distances, each known to lie in the piece that a point inside it belongs to."""
-        panel = np.searchsorted(self.edges, inside) - 1
+    def brightness(self, distance: Array, middle: Array) -> Array:
+        """Brightness along pieces that no edge cuts.
+
+        Parameters
+        ----------
+        distance : array (pieces, q, n)
+            Places on each piece, its ends among them if wanted [M].
+        middle : array (pieces, n)
+            A place inside each piece, which says to what it belongs; NaN for a piece that is none, which is dark [M].
+        """
+        panel = np.sum(middle >= self.edges[:, None, :], axis=0) - 1
         lit = (panel >= 0) & (panel < len(self.edges) - 1)
         for inner, outer in self.fronts:
-            lit &= ~((inside > inner) & (inside < outer))
-        panel = np.clip(panel, 0, len(self.edges) - 2)
-        low, high = self.edges[panel], self.edges[panel + 1]
-        x = np.where(lit, (2.0 * distance - low - high) / (high - low), 0.0)
-        value = legendre.legval(x, self.coefficients[panel].T, tensor=False)
-        return np.where(lit, value, 0.0)
+            lit &= ~((middle > inner) & (middle < outer))
+        panel, each = np.where(lit, panel, 0), np.arange(middle.shape[1])
+        low, high = self.edges[panel, each][:, None, :], self.edges[panel + 1, each][:, None, :]
+        x = np.where(lit[:, None, :], (2.0 * distance - low - high) / (high - low), 0.0)
+        value = legendre.legval(x, self.coefficients[:, panel, each][:, :, None, :], tensor=False)
+        return np.where(lit[:, None, :], value, 0.0)
 
 
-def corners(lines: Sequence[Line]) -> Array:
-    """Where brightness may jump or bend along a cut: every panel's edges and those of what is in front, ascending."""
-    everything = np.unique(np.concatenate([np.concatenate([line.edges, *line.fronts]) for line in lines]))
-    apart = np.diff(everything) > SAME_CORNER * everything[1:]
-    return everything[np.concatenate([[True], apart])]
+def corners(lines: Sequence[Lines]) -> Array:
+    """Where brightness may jump or bend, ascending along each angle: every panel's edges and those of what is in front;
+    shape (k, n).
+    """
+    return np.sort(np.concatenate([rows for line in lines for rows in (line.edges, *line.fronts)]), axis=0)
+
+
+def middles(marks: Array) -> Array:
+    """The middle of each piece between ascending corners (k, n); NaN where the piece is nothing but rounding."""
+    low, high = marks[:-1], marks[1:]
+    return np.where(high - low > SAME_CORNER * high, 0.5 * (low + high), np.nan)

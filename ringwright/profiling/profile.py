@@ -298,6 +298,7 @@ def _seen(
         )
     found = fringes(light, view, orders=scene.orders, longest=longest, position_angle=directions)
     frequency = None if scene.frequency is None else float(scene.frequency.to_value("Hz"))
+    width = np.array([float(np.nanmedian(row)) if np.isfinite(row).any() else 0.0 for row in rings.width])
     fringed = [order for order in FRINGED if order < scene.orders and rings.flux[order] > 0.0]
     return {
         "fringes": found,
@@ -307,13 +308,13 @@ def _seen(
                 light,
                 view,
                 order=order,
-                width=float(np.nanmedian(rings.width[order])),
+                width=float(width[order]),
                 longest=longest,
                 position_angle=rings.position_angle,
             )
             for order in fringed
         ),
-        "carriers": carriers(found, view, light),
+        "carriers": carriers(found, view, light, width),
         "first_sight": first_sight(found, view, sensitivity=sensitivity, frequency=frequency, unit=unit)
         if scene.orders > 1
         else None,

@@ -12,23 +12,29 @@ import itertools
 import math
 from collections.abc import Sequence
 from dataclasses import dataclass
+from typing import NamedTuple
 
 import numpy as np
 
 import raytrace as rt
 from raytrace.contract import Array
 from raytrace.panels import gauss_legendre
-from ringwright.profiling.cuts import POINTS, Line, corners
+from raytrace.roots import bracketed_roots
+from ringwright.errors import InputError
+from ringwright.lightwaves import visibility
+from ringwright.profiling.cuts import POINTS, Lines, corners, middles
 from ringwright.sampling import SampledLight
 from ringwright.scenes import Scene
 
 LIMIT_RATIO = math.exp(-math.pi)
 LIMIT_ROTATION = math.pi
 LIMIT_DELAY = 3.0 * math.sqrt(3.0) * math.pi
-# Points across a piece of a cut that integrals are taken on, and on which crests and half maxima are looked for.
-NODES = 24
+# Points across a piece of a cut that integrals are taken on: exact for the longest series times the square of a distance.
+NODES = 26
 # Rounds of the search for a half maximum or a crest, each on so many points of what the last left: to 1e-8 of a piece.
 ROUNDS = 6
+# Screen angles, at most, on which the circle that holds half the light is found: it is a mark, not a measurement.
+MOST_ANGLES = 256
 
 
 @dataclass(frozen=True)
@@ -107,118 +113,147 @@ def ring_table(
         [M]; the circle within which half of order 0's light is emitted unless given.
     scale : float
         Flux in the scene's unit per unit of ∫ I dα dβ.
+
+    Raises
+    ------
+    InputError
+        If some of the light comes from infinity, or the emitting radius lies inside the horizon.
     """
     position_angle = math.tau / count * np.arange(count, dtype=np.float64)
     angle = position_angle - scene.position_angle + 0.5 * math.pi
-    shapes = np.array([_shapes(light, each, scene.orders) for each in angle])
-    peak, mean, width, fwhm, flux = np.moveaxis(shapes, (2, 1, 0), (0, 1, 2))
+    by_order = [[part for part in light if part.order == order] for order in range(scene.orders)]
+    shapes = [_shape([Lines(part, angle) for part in parts]) for parts in by_order]
+    peak, mean, width, fwhm, angular_flux = (np.array(rows) for rows in zip(*shapes, strict=True))
     critical = scene.spacetime.critical_radius(scene.inclination, angle)
     inner = min(float(part.series.band.radii[0]) for part in light)
-    radius = _median_radius(light) if emitting_radius is None else emitting_radius
-    total = scale * flux.mean(axis=1) * math.tau
+    radius = _half_light_radius(scene, by_order[0]) if emitting_radius is None else emitting_radius
+    if not radius >= scene.spacetime.horizon:
+        raise InputError(
+            f"an emitting radius of {radius:g} M lies inside the horizon at {scene.spacetime.horizon:g} M and has no image; "
+            "give one outside"
+        )
     rotation, delay = _after_the_order_before(scene, radius, angle)
-    typical = np.array([_median(row) for row in width])
+    flux = scale * np.array([sum(_flux(part) for part in parts) for parts in by_order])
     return RingTable(
-        position_angle,
-        _images(scene, inner, angle),
-        _images(scene, math.inf, angle),
-        peak,
-        mean,
-        peak - critical,
-        mean - critical,
-        width,
-        fwhm,
-        scale * flux,
-        total,
-        total / total.sum(),
-        _over_the_one_before(typical),
-        _over_the_one_before(total),
-        rotation,
-        delay,
-        radius,
-        _notes(total, light),
+        position_angle=position_angle,
+        band_inner=_images(scene, inner, angle),
+        band_outer=_images(scene, math.inf, angle),
+        peak=peak,
+        mean=mean,
+        peak_offset=peak - critical,
+        mean_offset=mean - critical,
+        width=width,
+        fwhm=fwhm,
+        angular_flux=scale * angular_flux,
+        flux=flux,
+        fraction=flux / flux.sum(),
+        width_ratio=_over_the_one_before(np.array([_spread(row)[0] for row in width])),
+        flux_ratio=_over_the_one_before(flux),
+        rotation=rotation,
+        delay=delay,
+        emitting_radius=radius,
+        notes=_notes(by_order, flux, angular_flux),
     )
 
 
-def _shapes(light: Sequence[SampledLight], angle: float, orders: int) -> list[list[float]]:
-    """Peak, mean, width, FWHM and angular flux of every order along one screen angle."""
-    lines = [Line(part, angle) for part in light]
-    found = []
-    for order in range(orders):
-        mine = [line for line in lines if line.order == order]
-        found.append(_shape(mine))
-    return found
+def _flux(part: SampledLight) -> float:
+    """∫ I dα dβ of what is seen, at the light's own angles: those of the table may be too few for it."""
+    if not part.fronts:
+        return part.series.flux()
+    none = np.zeros(1)
+    return float(visibility(part, wavenumber=none, turn=none)[0].real)
 
 
-def _shape(lines: Sequence[Line]) -> list[float]:
+class _Shape(NamedTuple):
+    """What one order is along every angle, arrays (n,); NaN where it has no light, whose angular flux is 0."""
+
+    peak: Array
+    mean: Array
+    width: Array
+    fwhm: Array
+    angular_flux: Array
+
+
+def _shape(lines: Sequence[Lines]) -> _Shape:
     marks = corners(lines)
-    points, weights = gauss_legendre(NODES)
-    half = 0.5 * np.diff(marks)[:, None]
-    middle = 0.5 * (marks[1:] + marks[:-1])[:, None]
-    b = middle + half * points
-    value, weight = _sum(lines, b.ravel(), np.repeat(middle, NODES)), (half * weights).ravel()
-    b = b.ravel()
-    held = float(np.sum(value * weight))
-    if not held > 0.0:
-        return [math.nan] * 4 + [0.0]
-    mean = float(np.sum(value * weight * b)) / held
-    spread = math.sqrt(max(float(np.sum(value * weight * (b - mean) ** 2)) / held, 0.0))
+    b, light = _integrand(lines, marks)
+    held = np.sum(light, axis=(0, 1))
+    lit = held > 0.0
+    held = np.where(lit, held, np.nan)
+    mean = np.sum(light * b, axis=(0, 1)) / held
+    spread = np.sqrt(np.maximum(np.sum(light * (b - mean) ** 2, axis=(0, 1)) / held, 0.0))
     peak, height = _crest(lines, marks)
-    return [peak, mean, spread, _fwhm(lines, marks, 0.5 * height), float(np.sum(value * weight * b))]
+    return _Shape(
+        peak=np.where(lit, peak, np.nan),
+        mean=mean,
+        width=spread,
+        fwhm=np.where(lit, _fwhm(lines, marks, 0.5 * height), np.nan),
+        angular_flux=np.where(lit, np.sum(light * b, axis=(0, 1)), 0.0),
+    )
 
 
-def _sum(lines: Sequence[Line], distance: Array, inside: Array) -> Array:
-    return np.maximum(sum(line.brightness(distance, inside) for line in lines), 0.0)
+def _integrand(lines: Sequence[Lines], marks: Array) -> tuple[Array, Array]:
+    """Nodes on every piece of each cut [M], and the light there times db; shapes (pieces, NODES, n)."""
+    points, weights = gauss_legendre(NODES)
+    half = 0.5 * np.diff(marks, axis=0)[:, None, :]
+    b = 0.5 * (marks[1:] + marks[:-1])[:, None, :] + half * points[:, None]
+    return b, sum(line.brightness(b, middles(marks)) for line in lines) * half * weights[:, None]
 
 
-def _pieces(lines: Sequence[Line], marks: Array) -> tuple[Array, Array, Array]:
-    """Points on every piece of a cut, both ends included, the piece's middle beside them, and the light there."""
-    share = np.linspace(0.0, 1.0, POINTS)
-    b = marks[:-1, None] + np.diff(marks)[:, None] * share
-    middle = np.repeat(0.5 * (marks[1:] + marks[:-1]), POINTS).reshape(b.shape)
-    return b, middle, _sum(lines, b.ravel(), middle.ravel()).reshape(b.shape)
+def _seen(lines: Sequence[Lines], distance: Array, middle: Array) -> Array:
+    return np.maximum(sum(line.brightness(distance, middle) for line in lines), 0.0)
 
 
-def _crest(lines: Sequence[Line], marks: Array) -> tuple[float, float]:
-    """Place and height of the brightest point: the best sample, then thirds of the piece around it."""
-    b, middle, value = _pieces(lines, marks)
-    row, column = (int(place) for place in np.unravel_index(int(np.argmax(value)), value.shape))
-    best, height = b[row, column], value[row, column]
-    low, high = b[row, max(column - 1, 0)], b[row, min(column + 1, POINTS - 1)]
-    inside = np.full(POINTS, middle[row, column])
+def _sampled(lines: Sequence[Lines], marks: Array) -> tuple[Array, Array, Array]:
+    """Points on every piece, both ends included, the piece's middle beside them, and the light there; each
+    (pieces × POINTS, n).
+    """
+    b = np.linspace(marks[:-1], marks[1:], POINTS, axis=1)
+    middle = middles(marks)
+    value = _seen(lines, b, middle)
+    flat = (-1, marks.shape[1])
+    return b.reshape(flat), np.repeat(middle, POINTS, axis=0), value.reshape(flat)
+
+
+def _crest(lines: Sequence[Lines], marks: Array) -> tuple[Array, Array]:
+    """Place and height of the brightest point: the best sample, then ever closer around it within its piece."""
+    b, middle, value = _sampled(lines, marks)
+    each = np.arange(marks.shape[1])
+    at = np.argmax(value, axis=0)
+    best, height, inside = b[at, each], value[at, each], middle[at, each]
+    low = b[np.where(at % POINTS > 0, at - 1, at), each]
+    high = b[np.where(at % POINTS < POINTS - 1, at + 1, at), each]
     for _ in range(ROUNDS):
         place = np.linspace(low, high, POINTS)
-        light = _sum(lines, place, inside)
-        at = int(np.argmax(light))
-        if light[at] > height:
-            best, height = place[at], light[at]
-        low, high = place[max(at - 1, 0)], place[min(at + 1, POINTS - 1)]
-    return float(best), float(height)
+        light = _seen(lines, place[None], inside[None])[0]
+        at = np.argmax(light, axis=0)
+        best = np.where(light[at, each] > height, place[at, each], best)
+        height = np.maximum(light[at, each], height)
+        low, high = place[np.maximum(at - 1, 0), each], place[np.minimum(at + 1, POINTS - 1), each]
+    return best, height
 
 
-def _fwhm(lines: Sequence[Line], marks: Array, half: float) -> float:
+def _fwhm(lines: Sequence[Lines], marks: Array, half: Array) -> Array:
     """Between the outermost points at which brightness crosses half its maximum; a jump through it is such a point."""
-    b, middle, value = _pieces(lines, marks)
-    above = np.flatnonzero(value.ravel() >= half)
-    if not above.size:
-        return math.nan
-    flat, inside, bright = b.ravel(), middle.ravel(), value.ravel()
+    b, middle, value = _sampled(lines, marks)
+    above, each, last = value >= half, np.arange(marks.shape[1]), len(value) - 1
+    inner, outer = np.argmax(above, axis=0), last - np.argmax(above[::-1], axis=0)
     ends = []
-    for at, step in ((above[0], -1), (above[-1], 1)):
-        beside = at + step
-        if not 0 <= beside < flat.size or inside[beside] != inside[at] or bright[beside] >= half:
-            ends.append(float(flat[at]))
-            continue
-        ends.append(_crossing(lines, flat[beside], flat[at], inside[at], half))
+    for at, step in ((inner, -1), (outer, 1)):
+        beside = np.clip(at + step, 0, last)
+        # Where the neighbour lies on another piece brightness jumps just here.
+        beside = np.where(middle[beside, each] == middle[at, each], beside, at)
+        ends.append(_crossing(lines, b[beside, each], b[at, each], middle[at, each], half))
     return ends[1] - ends[0]
 
 
-def _crossing(lines: Sequence[Line], dark: float, bright: float, inside: float, half: float) -> float:
-    """Where brightness crosses a level between a darker and a brighter place."""
+def _crossing(lines: Sequence[Lines], dark: Array, bright: Array, inside: Array, half: Array) -> Array:
+    """Where brightness crosses a level between darker and brighter places."""
+    each = np.arange(half.size)
     for _ in range(ROUNDS):
         place = np.linspace(dark, bright, POINTS)
-        first = int(np.argmax(_sum(lines, place, np.full(POINTS, inside)) >= half))
-        dark, bright = float(place[max(first - 1, 0)]), float(place[first])
+        first = np.argmax(_seen(lines, place[None], inside[None])[0] >= half, axis=0)
+        dark, bright = place[np.maximum(first - 1, 0), each], place[first, each]
     return 0.5 * (dark + bright)
 
 
@@ -234,46 +269,55 @@ def _images(scene: Scene, radius: float, angle: Array) -> Array:
     )
 
 
-def _median_radius(light: Sequence[SampledLight]) -> float:
-    """Radius of the circle within which half of order 0's light is emitted, edge by edge of its panels and linear in
-    between.
-    """
-    first = [part for part in light if part.order == 0]
-    radii = np.unique(np.concatenate([part.series.band.radii for part in first]))
-    within = np.zeros(radii.size)
-    for part in first:
-        band = part.series.band
-        held = np.sum(band.weight * part.series.values, axis=(1, 2))
-        within += np.interp(radii, band.radii, np.concatenate([[0.0], np.cumsum(held)]))
-    return float(np.interp(0.5 * within[-1], within, radii))
+def _half_light_radius(scene: Scene, direct: Sequence[SampledLight]) -> float:
+    """Radius of the circle within which half of order 0's light is emitted [M]."""
+    count = min(MOST_ANGLES, max(len(part.series.band.angles) for part in direct))
+    angle = math.tau / count * (np.arange(count) + 0.5)
+    lines = [Lines(part, angle) for part in direct]
+    marks = corners(lines)
+
+    def within(limit: Array | float) -> float:
+        b, light = _integrand(lines, np.minimum(marks, limit))
+        return float(np.sum(light * b))
+
+    whole = within(math.inf)
+
+    def excess(radius: Array, index: object) -> Array:
+        limit = rt.isoradial(
+            radius, order=0, angle=angle, inclination=scene.inclination, spacetime=scene.spacetime
+        )
+        return np.array([within(np.asarray(limit)) - 0.5 * whole])
+
+    ends = [part.series.band.radii[[0, -1]] for part in direct]
+    inner, outer = min(low for low, _ in ends), max(high for _, high in ends)
+    return float(bracketed_roots(excess, np.array([inner]), np.array([outer]))[0])
 
 
 def _after_the_order_before(scene: Scene, radius: float, angle: Array) -> tuple[Array, Array]:
     """Rotation and delay of every order after the one before: median, least, greatest over angle, shape (orders, 3)."""
-    azimuth, delay = [], []
-    for order, b in enumerate(_images(scene, radius, angle)):
+    images = _images(scene, radius, angle)
+    azimuth, delay = np.full((2, *images.shape), np.nan)
+    for order, b in enumerate(images):
+        seen = np.isfinite(b)  # an exactly edge-on view has rays within the plane, which have no crossing
         hit = rt.trace(
-            b * np.cos(angle),
-            b * np.sin(angle),
+            b[seen] * np.cos(angle[seen]),
+            b[seen] * np.sin(angle[seen]),
             inclination=scene.inclination,
             orders=order + 1,
             spacetime=scene.spacetime,
             momentum=False,
         ).only(order)
-        azimuth.append(np.asarray(hit.azimuth)[0])
-        delay.append(np.asarray(hit.delay)[0])
-    turned = [np.mod(after - before, math.tau) for before, after in itertools.pairwise(azimuth)]
-    later = [after - before for before, after in itertools.pairwise(delay)]
-    return _spread(turned), _spread(later)
+        azimuth[order, seen], delay[order, seen] = hit.azimuth, hit.delay
+    blank = [[math.nan] * 3]
+    turned = [_spread(np.mod(after - before, math.tau)) for before, after in itertools.pairwise(azimuth)]
+    later = [_spread(after - before) for before, after in itertools.pairwise(delay)]
+    return np.array(blank + turned), np.array(blank + later)
 
 
-def _spread(rows: Sequence[Array]) -> Array:
-    blank = [math.nan] * 3
-    return np.array([blank, *([_median(row), float(np.nanmin(row)), float(np.nanmax(row))] for row in rows)])
-
-
-def _median(row: Array) -> float:
-    return float(np.nanmedian(row)) if np.isfinite(row).any() else math.nan
+def _spread(row: Array) -> list[float]:
+    """Median, least and greatest of what is known; NaN where nothing is."""
+    known = row[np.isfinite(row)]
+    return [float(pick(known)) for pick in (np.median, np.min, np.max)] if known.size else [math.nan] * 3
 
 
 def _over_the_one_before(values: Array) -> Array:
@@ -282,7 +326,16 @@ def _over_the_one_before(values: Array) -> Array:
     return np.concatenate([[math.nan], np.where(np.isfinite(ratio), ratio, math.nan)])
 
 
-def _notes(flux: Array, light: Sequence[SampledLight]) -> tuple[str, ...]:
-    hidden = any(part.fronts for part in light)
-    why = "an opaque disk in front hides it" if hidden else "nothing of the emitter is seen in it"
-    return tuple(f"order {order} carries no light: {why}" for order in np.flatnonzero(~(flux > 0.0)))
+def _notes(by_order: Sequence[Sequence[SampledLight]], flux: Array, angular_flux: Array) -> tuple[str, ...]:
+    """Sentences for orders without light, and for those that are hidden at some of the angles."""
+    found = []
+    for order, parts in enumerate(by_order):
+        hidden, dark = any(part.fronts for part in parts), int(np.sum(angular_flux[order] == 0.0))
+        if not flux[order] > 0.0:
+            why = "an opaque disk in front hides it" if hidden else "nothing of the emitter is seen in it"
+            found.append(f"order {order} carries no light: {why}")
+        elif hidden and dark:
+            found.append(
+                f"order {order} is hidden by an opaque disk in front at {dark} of {angular_flux.shape[1]} position angles"
+            )
+    return tuple(found)

@@ -75,8 +75,19 @@ class FirstSight:
         return self.length / EARTH_DIAMETER
 
 
-def carriers(found: Fringes, view: View, light: Sequence[SampledLight]) -> tuple[Carrier, ...]:
-    """From which baseline on each order carries the envelope, or why it never does."""
+def carriers(
+    found: Fringes, view: View, light: Sequence[SampledLight], width: Array
+) -> tuple[Carrier, ...]:
+    """From which baseline on each order carries the envelope, or why it never does.
+
+    Parameters
+    ----------
+    found, view, light
+        As for `fringes`.
+    width : array (orders,)
+        Typical width of each order, as the root of its second moment [M].
+    """
+    resolved = math.tau * found.baseline[-1] * view.theta_g * width > 1.0
     answers = []
     for order in range(found.envelope.shape[0]):
         baseline = first_carried(found, order, view)
@@ -87,17 +98,19 @@ def carriers(found: Fringes, view: View, light: Sequence[SampledLight]) -> tuple
             ]
         )
         never = np.isnan(baseline).any()
-        answers.append(Carrier(order, baseline, flux, _reason(found, order, light) if never else ""))
+        answers.append(Carrier(order, baseline, flux, _reason(found, order, light, resolved) if never else ""))
     return tuple(answers)
 
 
-def _reason(found: Fringes, order: int, light: Sequence[SampledLight]) -> str:
+def _reason(found: Fringes, order: int, light: Sequence[SampledLight], resolved: Array) -> str:
     longest = f"never below {found.baseline[-1] / 1e9:.4g} Gλ"
     if not np.any(found.envelope[order] > 0.0):
         return f"never: order {order} carries no light"
     last = int(np.argmax(found.envelope[:, :, -1].max(axis=1)))
     if last > order:
         return f"{longest}: before it could, order {last} has taken over"
+    if not resolved[last]:
+        return f"{longest}: order {last}, whose width such baselines do not resolve, still has more"
     if sharp_edges([part for part in light if part.order == last]):
         return f"{longest}, because the emission has sharp edges, whose visibility falls only as u^−3/2"
     return f"{longest}: order {last} still has more"

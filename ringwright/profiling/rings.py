@@ -20,7 +20,6 @@ import raytrace as rt
 from raytrace.contract import Array
 from raytrace.panels import gauss_legendre
 from raytrace.roots import bracketed_roots
-from ringwright.errors import InputError
 from ringwright.lightwaves import visibility
 from ringwright.profiling.cuts import POINTS, Lines, corners, middles
 from ringwright.sampling import SampledLight
@@ -117,7 +116,9 @@ def ring_table(
     Raises
     ------
     InputError
-        If some of the light comes from infinity, or the emitting radius lies inside the horizon.
+        If some of the light comes from infinity.
+    ValueError
+        If the emitting radius lies inside the horizon.
     """
     position_angle = math.tau / count * np.arange(count, dtype=np.float64)
     angle = position_angle - scene.position_angle + 0.5 * math.pi
@@ -127,11 +128,6 @@ def ring_table(
     critical = scene.spacetime.critical_radius(scene.inclination, angle)
     inner = min(float(part.series.band.radii[0]) for part in light)
     radius = _half_light_radius(scene, by_order[0]) if emitting_radius is None else emitting_radius
-    if not radius >= scene.spacetime.horizon:
-        raise InputError(
-            f"an emitting radius of {radius:g} M lies inside the horizon at {scene.spacetime.horizon:g} M and has no image; "
-            "give one outside"
-        )
     rotation, delay = _after_the_order_before(scene, radius, angle)
     flux = scale * np.array([sum(_flux(part) for part in parts) for parts in by_order])
     return RingTable(
@@ -272,7 +268,7 @@ def _images(scene: Scene, radius: float, angle: Array) -> Array:
 def _half_light_radius(scene: Scene, direct: Sequence[SampledLight]) -> float:
     """Radius of the circle within which half of order 0's light is emitted [M]."""
     count = min(MOST_ANGLES, max(len(part.series.band.angles) for part in direct))
-    angle = math.tau / count * (np.arange(count) + 0.5)
+    angle = math.tau / count * (np.arange(count, dtype=np.float64) + 0.5)
     lines = [Lines(part, angle) for part in direct]
     marks = corners(lines)
 

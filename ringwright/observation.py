@@ -16,9 +16,11 @@ from pydantic import Field
 
 from ringwright.scenes.errors import SceneError
 from ringwright.scenes.models import Name, Strict
-from ringwright.scenes.validation import examined, read_document
-from ringwright.units import KINDS, parse_given, plain_number, shown
+from ringwright.scenes.starters import example
+from ringwright.scenes.validation import dotted, examined, read_document
+from ringwright.units import KINDS, parse_given, plain_number, shown, unit_size
 
+UNLIKE = 10.0  # units of a value and its error that differ by this factor are taken for a slip
 ESTIMATORS = ("peak-ring",)
 WHY_NO_RESOLUTION = (
     "because the choice moves the mass by 10 to 20 %: give the FWHM that the image had "
@@ -88,6 +90,10 @@ class Observation:
         "log" for a prior flat in ln θ_g, "flat" for one flat in θ_g.
     scene_priors : dict
         Priors on scene parameters by key.
+    unlike_units : tuple of str
+        Numbers whose error stands in a unit of another size, which is a slip more often than not.
+    of_example : tuple of str
+        Which of "diameter" and "distance" still hold the invented numbers of the commented example.
     """
 
     name: str
@@ -101,6 +107,8 @@ class Observation:
     theta_g: Measurement | None = None
     theta_g_shape: str = "log"
     scene_priors: dict[str, Measurement] = field(default_factory=dict)
+    unlike_units: tuple[str, ...] = ()
+    of_example: tuple[str, ...] = ()
 
 
 def load_observation(path: str | Path) -> Observation:
@@ -137,23 +145,40 @@ def load_observation(path: str | Path) -> Observation:
         estimator=diameter.estimator,
         theta_g_shape=prior.theta_g_shape,
         scene_priors=scene_priors,
+        unlike_units=tuple(reader.unlike),
+        of_example=_of_example(document.data),
         **numbers,  # type: ignore[arg-type]
     )
 
 
+def _of_example(data: dict[str, Any]) -> tuple[str, ...]:
+    invented = example("observation")
+    return tuple(key for key in ("diameter", "distance") if data.get(key) == invented[key])
+
+
 class _Reader:
-    """Reads numbers with errors, and keeps what is wrong with them."""
+    """Reads numbers with errors, and keeps what is wrong with them and what is odd."""
 
     def __init__(self) -> None:
         self.found: list[tuple[tuple[str | int, ...], str]] = []
+        self.unlike: list[str] = []
 
     def number(self, place: tuple[str, ...], table: Any, kind: str, *, positive: bool = True) -> Measurement:
         value = self.part((*place, "value"), table.value, kind)
         plus, minus = self.errors((*place, "error"), table.error, kind)
         if positive and value <= 0.0:
             self.found.append(((*place, "value"), f"{shown(table.value)} is not positive"))
+        if kind and not (math.isnan(value) or math.isnan(plus + minus)):
+            self.compare_units(dotted(place), table, kind)
         unit = KINDS[kind][0] if kind else ""
         return Measurement(*(number * u.Unit("" if unit == "M" else unit) for number in (value, plus, minus)))
+
+    def compare_units(self, name: str, table: Any, kind: str) -> None:
+        """Note a value and an error whose units differ tenfold or more."""
+        errors = list(table.error.values()) if isinstance(table.error, dict) else [table.error]
+        ratios = [unit_size(error, kind) / unit_size(table.value, kind) for error in errors]
+        if any(max(ratio, 1.0 / ratio) >= UNLIKE for ratio in ratios):
+            self.unlike.append(f"{name}: {table.value} with an error of {' and '.join(errors)}")
 
     def errors(self, place: tuple[str, ...], given: Any, kind: str) -> tuple[float, float]:
         """Errors upward and downward."""

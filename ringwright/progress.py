@@ -53,10 +53,20 @@ def _lines(what: str) -> Report:
         first = shown == 0.0 and now - start >= FIRST_LINE_SECONDS
         due = now - last >= LINE_EVERY_SECONDS and done / total - shown >= LINE_EVERY_SHARE
         if first or due or done == total:
-            left = (now - start) / done * (total - done)
             note = f", {failed} failed" if failed else ""
-            when = f"about {left:.0f} s left" if done < total else f"in {now - start:.0f} s"
-            print(f"{what}: {done} of {total}{note}, {when}", file=sys.stderr, flush=True)
+            print(
+                f"{what}: {done} of {total}{note}{_when(done, total, now - start)}",
+                file=sys.stderr,
+                flush=True,
+            )
             last, shown = now, done / total
 
     return show
+
+
+def _when(done: int, total: int, seconds: float) -> str:
+    """How long it took, or will take where enough is done to tell."""
+    if done == total:
+        return f", in {seconds:.0f} s"
+    left = seconds / done * (total - done)
+    return f", about {left:.0f} s left" if done / total >= LINE_EVERY_SHARE else ""

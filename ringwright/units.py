@@ -92,6 +92,11 @@ def parse(text: str, kind: str) -> float:
     return _converted(number, name, kind)
 
 
+def unit_size(text: str, kind: str) -> float:
+    """How large the unit of a quantity is, in the unit that its kind is kept in; errors are those of `parse`."""
+    return parse(f"1 {_split(text, KINDS[kind][1])[1]}", kind)
+
+
 def parse_given(value: object, kind: str) -> float:
     """The same for a value out of a file, which may be no text at all."""
     if isinstance(value, str):

@@ -29,6 +29,9 @@ FEWEST_IN_END = 8  # scenes needed to fit a slope at all
 # At r/d = 0.6 a ring of zero width reads its diameter 18 % small (exact blurred thin ring): r is then 0.73
 # of what is read.
 RESOLVED = 0.73
+# No interferometer of today separates a tenth of its ring: a resolution below that is a slip of digit or unit.
+FINE = 0.1
+TINY = 1e-3  # no ring, distance or mass of a nucleus is known to better than a part in a thousand
 END_SIGMA = 2.0  # a table that stops within two standard errors of the observed diameter cuts the posterior
 END_SHARE = 0.05  # of the posterior weight
 WIDENED = 0.03  # of the error of the diameter by that of the readings, before it is worth a sentence
@@ -71,20 +74,77 @@ def of_scan(
 
 
 def of_observation(observed: Observed) -> list[Caution]:
+    """What is odd about the numbers as given, and a ring that its own resolution hardly resolves."""
+    found = [_example(observed), *_unlike(observed), *_tiny(observed), _fine(observed), _unresolved(observed)]
+    return [item for item in found if item is not None]
+
+
+def _example(observed: Observed) -> Caution | None:
+    if not observed.of_example:
+        return None
+    return Caution(
+        "example-numbers",
+        f"The {' and the '.join(observed.of_example)} of this observation are those of the commented example, "
+        "and invented.",
+        "Write your own numbers into the file.",
+    )
+
+
+def _unlike(observed: Observed) -> list[Caution]:
+    return [
+        Caution(
+            "unlike-units",
+            f"{text[:1].upper()}{text[1:]}: the units of value and error differ in size.",
+            "Check that both are meant; written in one unit they are easier to read.",
+        )
+        for text in observed.unlike_units
+    ]
+
+
+def _tiny(observed: Observed) -> list[Caution]:
+    given = {
+        "diameter": observed.diameter,
+        "distance": observed.distance,
+        "prior on the mass": observed.mass,
+        "prior on θ_g": observed.theta_g,
+    }
+    return [
+        Caution(
+            "tiny-error",
+            f"The error of the {name} is {100 * number.relative:.2g} % of its value, and the readings of a scan "
+            "are good to some 0.3 %.",
+            "Check the units and the digits of both.",
+        )
+        for name, number in given.items()
+        if number is not None and 0.0 < number.relative < TINY
+    ]
+
+
+def _fine(observed: Observed) -> Caution | None:
+    finest = min(observed.resolution, default=math.inf)
+    if finest >= FINE * observed.diameter.mode:
+        return None
+    return Caution(
+        "fine-resolution",
+        f"A resolution of {finest:.3g} µas is less than a tenth of the ring's diameter, "
+        f"{observed.diameter.mode:.4g} µas: synthetic images are then read so sharply that thin rings of higher "
+        "order take the peak.",
+        "Check its digits and its unit; it is the FWHM of the whole image, not an error or a pixel.",
+    )
+
+
+def _unresolved(observed: Observed) -> Caution | None:
     """A ring that its own resolution hardly resolves."""
     widest = max(observed.resolution, default=0.0)
     if widest <= RESOLVED * observed.diameter.mode:
-        return []
-    return [
-        Caution(
-            "unresolved-ring",
-            f"At a resolution of {widest:.3g} µas a ring that reads {observed.diameter.mode:.3g} µas is "
-            "hardly resolved: even one "
-            "of zero width reads its diameter at least 18 % too small.",
-            f"Ask for a resolution finer than {RESOLVED * observed.diameter.mode:.2g} µas, or for a diameter "
-            "fitted to the visibilities.",
-        )
-    ]
+        return None
+    return Caution(
+        "unresolved-ring",
+        f"At a resolution of {widest:.3g} µas a ring that reads {observed.diameter.mode:.3g} µas is hardly "
+        "resolved: even one of zero width reads its diameter at least 18 % too small.",
+        f"Ask for a resolution finer than {RESOLVED * observed.diameter.mode:.2g} µas, or for a diameter "
+        "fitted to the visibilities.",
+    )
 
 
 def of_budget(budget: Budget, family: str) -> list[Caution]:
@@ -132,7 +192,7 @@ def _few(table: ScanTable, ring: Posterior) -> Caution | None:
 def _coarse(observed: Observed, table: ScanTable, ring: Posterior) -> Caution | None:
     numerical = math.sqrt(float(ring.shares() @ np.nan_to_num(table.halfway_error) ** 2))
     widened = math.hypot(1.0, numerical / observed.diameter.relative) - 1.0
-    if widened <= WIDENED:
+    if widened <= WIDENED or observed.diameter.relative < TINY:  # then the error is what is wrong
         return None
     return Caution(
         "coarse-readings",

@@ -43,6 +43,8 @@ class Observed:
         Prior flat in θ_g instead of ln θ_g.
     scene_priors : dict
         Priors on scene parameters by key, in the unit of the scan's numbers (M, rad or none).
+    unlike_units, of_example : tuple of str
+        What in the file looks like a slip (see `Observation`).
     """
 
     name: str
@@ -54,6 +56,8 @@ class Observed:
     theta_g: TwoPiece | None = None
     flat: bool = False
     scene_priors: dict[str, TwoPiece] = field(default_factory=dict)
+    unlike_units: tuple[str, ...] = ()
+    of_example: tuple[str, ...] = ()
 
     def __post_init__(self) -> None:
         self._check_priors()

@@ -70,6 +70,8 @@ def read_observation(
             key: plain(measurement, "rad" if _is_angle(measurement) else "")
             for key, measurement in observation.scene_priors.items()
         },
+        unlike_units=observation.unlike_units,
+        of_example=observation.of_example,
     )
 
 

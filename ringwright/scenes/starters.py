@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import tomllib
 from pathlib import Path
 from typing import Any, Literal
 
@@ -28,6 +29,11 @@ def new_file(kind: Kind, path: str | Path, *, replace: bool = False) -> Path:
     with written_whole(target) as temporary:
         temporary.write_text(text, encoding="utf-8")
     return target
+
+
+def example(kind: Kind) -> dict[str, Any]:
+    """What the commented file of a kind says, as data: its numbers are invented."""
+    return tomllib.loads((STARTERS / f"{kind}.toml").read_text(encoding="utf-8"))
 
 
 def scene_schema() -> dict[str, Any]:

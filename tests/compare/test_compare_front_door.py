@@ -13,6 +13,7 @@ from synthetic_scans import family_table, parameter, table_of
 import ringwright as rw
 from ringwright.errors import InputError
 from ringwright.observation import load_observation
+from ringwright.scenes import new_file
 
 TEXT = """
 name = "made-up"
@@ -51,6 +52,29 @@ def test_units_come_off_once(observation):
 )
 def test_every_kind_of_resolution_is_understood(observation, resolution, expected):
     assert rw.compare(observation(resolution=resolution), family_table()).observation.resolution == expected
+
+
+def test_units_of_value_and_error_that_differ_tenfold_are_warned_of(observation):
+    said = [
+        item for item in rw.compare(observation(), family_table()).warnings if item.code == "unlike-units"
+    ]
+    assert [item.text.split(":")[0] for item in said] == ["Diameter", "Distance"]
+    assert "16800 kpc with an error of 0.8 Mpc" in said[1].text
+    path = observation()
+    text = path.read_text(encoding="utf-8").replace("0.0421 mas", "42.1 µas").replace("16800 k", "16.8 M")
+    path.write_text(text, encoding="utf-8")
+    assert load_observation(path).unlike_units == ()
+
+
+def test_numbers_of_the_commented_example_are_named(tmp_path):
+    path = new_file("observation", tmp_path / "mine.toml")
+    first = rw.compare(path, family_table()).warnings[0]
+    assert first.code == "example-numbers"
+    assert "diameter and the distance" in first.text
+    path.write_text(path.read_text(encoding="utf-8").replace("44.7 uas", "31.5 uas"), encoding="utf-8")
+    assert "The distance of this observation" in rw.compare(path, family_table()).warnings[0].text
+    path.write_text(path.read_text(encoding="utf-8").replace("19.3 Mpc", "13.4 Mpc"), encoding="utf-8")
+    assert "example-numbers" not in [item.code for item in rw.compare(path, family_table()).warnings]
 
 
 def test_path_object_and_product_give_the_same(observation, tmp_path):

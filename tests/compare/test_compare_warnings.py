@@ -89,6 +89,21 @@ def test_a_ring_not_resolved_is_warned_of():
     assert "finer than 31 µas" in asked  # 0.73 of 42: what it warns of and what it asks for are one limit
 
 
+def test_slips_of_digit_and_unit_are_warned_of():
+    # Common practice, no source: the limits are named with their reasons in `cautions`.
+    assert "fine-resolution" in codes(compare_numbers(observed(resolution=(2.0,)), (family_table(),)))
+    assert "fine-resolution" not in codes(compare_numbers(observed(resolution=(4.5,)), (family_table(),)))
+    assert "fine-resolution" not in codes(compare_numbers(observed(resolution=()), (family_table(),)))
+    rough = family_table(halfway_error=np.full(256, 0.003))
+    tiny = compare_numbers(observed(error=0.02, distance=TwoPiece(13400.0, 0.9, 0.9)), (rough,))
+    assert codes(tiny)[:2] == ["tiny-error", "tiny-error"]
+    assert "error of the diameter is 0.048 % of its value" in tiny.warnings[0].text
+    assert "error of the distance is 0.0067 %" in tiny.warnings[1].text
+    assert "coarse-readings" not in codes(tiny)
+    kinds = codes(compare_numbers(observed(distance=TwoPiece(8.277e-3, 9e-6, 9e-6)), (family_table(),)))
+    assert "tiny-error" not in kinds  # a Galactic Centre distance that is good to 0.11 %
+
+
 def test_a_posterior_cut_by_the_end_of_a_table_is_warned_of():
     assert "table-end" in codes(compare_numbers(observed(), (family_table(lost=0.5),)))
     ended = family_table(lost=0.5)

@@ -141,22 +141,25 @@ def scan(options: argparse.Namespace) -> int:
 
 
 def compare(options: argparse.Namespace) -> int:
-    """Compare an observation with scans and draw the figures."""
+    """Compare an observation with scans, write the answer and draw the figures."""
     from ringwright.comparing import compare as compare_ring
     from ringwright.comparing import summary
+    from ringwright.comparing.report import earlier_answer, report_path, write_report
     from ringwright.figures.comparison import draw_comparison, targets
     from ringwright.observation import load_observation
 
     observation = load_observation(options.observation)
     stem = Path(options.out) if options.out else products.default_output(observation.name, "")
-    for target in targets(stem):
+    for target in (report_path(stem), *targets(stem)):
         products.check_companion(target, observation.name, replace=options.replace)
     answer = compare_ring(observation, *options.scans)
-    written = draw_comparison(answer, stem)
+    earlier = earlier_answer(answer, stem)
+    written = [write_report(answer, stem), *draw_comparison(answer, stem)]
     if options.json:
         print_json({**answer.to_json(), "files": [str(path) for path in written]})
         return DONE
     print(summary(answer))
+    _print_all("replaced", [f"an earlier answer, {earlier}"] if earlier else [])
     _print_all("wrote", written)
     return DONE
 

@@ -12,7 +12,8 @@ from collections.abc import Callable
 from pathlib import Path
 
 import ringwright as rw
-from ringwright.comparing import Comparison, summary
+from ringwright.comparing import Comparison
+from ringwright.comparing.report import write_report
 from ringwright.figures.comparison import draw_comparison
 from ringwright.figures.image import draw_image
 from ringwright.figures.ring import picture
@@ -89,8 +90,8 @@ def compare() -> dict[tuple[str, str], Comparison]:
         for family in SCANS:
             answers[name, family] = rw.compare(observation, OUTPUTS / f"{family}.h5")
     both = rw.compare(SCENES / "first-observation.toml", *(OUTPUTS / f"{family}.h5" for family in SCANS))
+    write_report(both, OUTPUTS / "first-observation")
     draw_comparison(both, OUTPUTS / "first-observation")
-    (OUTPUTS / "first-observation.txt").write_text(summary(both) + "\n", encoding="utf-8")
     return answers
 
 

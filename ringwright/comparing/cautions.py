@@ -16,6 +16,7 @@ from ringwright.comparing.inputs import Observed
 from ringwright.comparing.likelihood import Posterior, closed_rings
 from ringwright.comparing.priors import Replaced
 from ringwright.comparing.results import Caution
+from ringwright.comparing.words import named, plain
 from ringwright.scanning.table import SCENE_FAILED, ScanParameter, ScanTable
 
 Array = NDArray[np.float64]
@@ -216,16 +217,18 @@ def _table_end(observed: Observed, table: ScanTable, ring: Posterior) -> Caution
     if share <= END_SHARE:
         return None
     lost = float(ring.shares()[cut & ~goes_on].sum()) > 0.5 * share
-    why = "there the ring is lost at this resolution" if lost else "there the table of the scan stops"
+    why = "the ring is lost at this resolution" if lost else "the table of the scan stops"
     remedy = (
-        "These scenes are cut at the smallest θ_g that still shows a ring: a finer resolution would decide."
+        "Quote the lower ends with this caution; only an image of finer resolution, or knowledge that leaves such "
+        "scenes out of the scan, would settle them."
         if lost
         else "State a finer resolution, or extend the tables of the scan to larger r/θ_g."
     )
     return Caution(
         "table-end",
-        f"For {100 * share:.0f} % of the posterior weight of {table.name} the posterior reaches the "
-        f"smallest θ_g with a reading; {why}.",
+        f"For {100 * share:.0f} % of the posterior weight of {table.name} {why} just below the θ_g that fits, so "
+        "the side of small θ_g is cut off: the lower ends of θ_g and of the mass rest on where that happens, and "
+        "the answer leans toward large ones.",
         remedy,
     )
 
@@ -245,7 +248,7 @@ def _outside(table: ScanTable, replaced: tuple[Replaced, ...]) -> list[Caution]:
     return [
         Caution(
             "prior-outside-scan",
-            f"Only {100 * item.covered:.0f} % of the prior on {item.key} ({item.new}) lies within the "
+            f"Only {100 * item.covered:.0f} % of the prior on {plain(item.key)} ({item.new}) lies within the "
             f"range of {table.name} ({item.old}).",
             f"Widen the range of {item.key} in the scan.",
         )
@@ -302,10 +305,9 @@ def _line(x: Array, y: Array, weight: Array) -> tuple[float, float, float]:
 def _widen(parameter: ScanParameter, end: str, scan: str, which: str) -> Caution:
     return Caution(
         "range-end",
-        f"The {which} posterior of {parameter.key} in {scan} still rises toward the {end} end of its "
-        "range, and the conversion factor still "
-        "changes there: the answer depends on where the range was cut.",
-        f"Widen the range of {parameter.key} at its {end} end, or say why it stops there.",
+        f"The {which} posterior of {named(parameter.key)} in {scan} still rises toward the {end} end of its "
+        "range, and the conversion factor still changes there: the answer depends on where the range was cut.",
+        f"Widen the range of {plain(parameter.key)} at its {end} end, or say why it stops there.",
     )
 
 

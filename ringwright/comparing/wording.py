@@ -13,6 +13,7 @@ from ringwright.comparing import formats
 from ringwright.comparing.budget import Budget
 from ringwright.comparing.inputs import Observed
 from ringwright.comparing.results import Answer, Comparison, Estimate, FamilyAnswer
+from ringwright.comparing.words import plain, value
 
 WIDTH = 110  # characters of a line of running text
 
@@ -20,7 +21,7 @@ WIDTH = 110  # characters of a line of running text
 def summary(comparison: Comparison) -> str:
     """What the command line prints."""
     several = len(comparison.families) > 1
-    parts = [_observed(comparison)]
+    parts = [given(comparison)]
     for family in comparison.families:
         parts.append(
             _section(f"Emitter family: {family.family} (scan {family.table.name})", family, comparison)
@@ -28,9 +29,9 @@ def summary(comparison: Comparison) -> str:
     if several:
         parts.append(_section("All families, each at equal prior weight", comparison, comparison))
     parts += [
-        _priors(comparison),
-        _fixed(comparison),
         _warnings(comparison),
+        _list("Priors", _priors(comparison)),
+        _list("Held fixed, and missing", _fixed(comparison)),
         _list("Cautions", comparison.notes),
     ]
     return "\n\n".join(part for part in parts if part)
@@ -45,21 +46,23 @@ def paper_line(answer: Answer, comparison: Comparison) -> str:
     line = f"θ_g = {formats.asymmetric(theta)} µas"
     if mass.value is None or budget is None:
         return f"{line}, {tail}"
-    return f"{line}; M = {_mass_with_parts(mass, budget)} (± measurement ± emission ± distance), {tail}"
+    return f"{line}; M = {formats.mass(mass)} ({_mass_parts(mass, budget)}), {tail}"
 
 
-def _mass_with_parts(mass: Estimate, budget: Budget) -> str:
-    exponent = formats.power(mass.number)
-    middle = mass.number / 10.0**exponent
-    parts = [
-        middle * math.sqrt(value) for value in (budget.measurement, budget.emission, budget.distance or 0.0)
-    ]
-    places = formats.decimals(max(parts))
-    errors = " ".join(f"± {part:.{places}f}" for part in parts)
-    return f"({middle:.{places}f} {errors}) × {formats.ten_to(exponent)} M☉"
+def _mass_parts(mass: Estimate, budget: Budget) -> str:
+    """What the error of a mass is made of: standard deviations, in its own power of ten."""
+    middle = mass.number / 10.0 ** formats.power(mass.number)
+    parts = {
+        "measurement": middle * math.sqrt(budget.measurement),
+        "emission": middle * math.sqrt(budget.emission),
+        "distance": middle * math.sqrt(budget.distance or 0.0),
+    }
+    places = formats.decimals(max(parts.values()))
+    return ", ".join(f"± {part:.{places}f} {name}" for name, part in parts.items())
 
 
-def _observed(comparison: Comparison) -> str:
+def given(comparison: Comparison) -> str:
+    """What was observed, and what is known besides."""
     observed = comparison.observation
     lines = [
         f"Observation {observed.name}: ring diameter {formats.published(observed.diameter, 'µas')}, "
@@ -104,8 +107,7 @@ def _section(title: str, answer: Answer, comparison: Comparison) -> str:
     if mass.value is not None:
         exponent = formats.power(mass.number)
         lines.append(
-            f"  Mass, ring only: {formats.mass(mass)}; 95 % from {formats.between(mass, 10.0**exponent)} "
-            f"× {formats.ten_to(exponent)} M☉"
+            f"  Mass, ring only: 95 % from {formats.between(mass, 10.0**exponent)} × {formats.ten_to(exponent)} M☉"
         )
     return "\n".join([title, *lines, *_combined(answer), *_budget(answer.budget), f"  {count}"])
 
@@ -138,7 +140,7 @@ def _budget(budget: Budget | None) -> list[str]:
         rows.append(("distance", budget.distance))
     lines += [f"    {name:<12} {_share(value, budget.total)}" for name, value in rows]
     lines += [
-        f"      {name:<28} {100 * value / budget.total:5.1f} % of the variance"
+        f"      {plain(name):<28} {100 * value / budget.total:5.1f} % of the variance"
         for name, value in _named(budget.parts).items()
     ]
     said = "at least twice" if budget.emission_dominates else f"{budget.ratio:.2f} times"
@@ -163,14 +165,29 @@ def _share(variance: float, total: float) -> str:
     )
 
 
-def _priors(comparison: Comparison) -> str:
-    return _list("Priors", tuple(f"{key}: {value}" for key, value in comparison.prior.items()))
+def _priors(comparison: Comparison) -> tuple[str, ...]:
+    """One line for scale and distance, and one for each family."""
+    families = {
+        item.family: {parameter.key: f"{item.family}: {parameter.key}" for parameter in item.table.parameters}
+        for item in comparison.families
+    }
+    of_families = {name for keys in families.values() for name in keys.values()}
+    general = "; ".join(
+        f"{name.replace('theta_g', 'θ_g')}: {words}"
+        for name, words in comparison.prior.items()
+        if name not in of_families
+    )
+    lines = [
+        f"{family}: " + "; ".join(f"{plain(key)} {comparison.prior[name]}" for key, name in keys.items())
+        for family, keys in families.items()
+    ]
+    return (general, *lines)
 
 
-def _fixed(comparison: Comparison) -> str:
-    fixed = tuple(f"{key} = {value}" for key, value in comparison.held_fixed.items())
-    missing = tuple(f"not in the scan: {item}" for item in comparison.missing_physics)
-    return _list("Held fixed, and missing", fixed + missing)
+def _fixed(comparison: Comparison) -> tuple[str, ...]:
+    fixed = "; ".join(f"{plain(key)}: {value(text)}" for key, text in comparison.held_fixed.items())
+    missing = "; ".join(comparison.missing_physics)
+    return (*([f"held fixed: {fixed}"] if fixed else []), f"not in the scan: {missing}")
 
 
 def _warnings(comparison: Comparison) -> str:

@@ -150,16 +150,28 @@ def test_from_starter_files_to_a_mass(capsys, monkeypatch, tmp_path):
     said = capsys.readouterr().out
     for words in (
         "θ_g =",
-        "± measurement ± emission ± distance",
+        " measurement, ± ",
         "not a shadow diameter",
         "prior is not a measurement",
     ):
         assert words in said
+    report = (tmp_path / "outputs" / "my-observation.txt").read_text(encoding="utf-8")
+    assert said.split("failed\n", 1)[1] in report
+    assert "my-observation compared with outputs/my-scan.h5" in report
     assert main(["compare", "observation.toml", "outputs/my-scan.h5", "--json"]) == 0
-    answer = json.loads(capsys.readouterr().out)
+    captured = capsys.readouterr()
+    assert "replaced" not in captured.err
+    answer = json.loads(captured.out)
+    assert "outputs/my-observation.txt" in answer["files"]
     assert answer["ring_only"]["mass"]["unit"] == "solMass"
     assert {"low68", "high68", "low95", "high95", "value", "unit"} <= answer["ring_only"]["theta_g"].keys()
     assert len(list((tmp_path / "outputs").glob("my-observation-*.png"))) == 3
+    text = (tmp_path / "observation.toml").read_text(encoding="utf-8")
+    (tmp_path / "observation.toml").write_text(text.replace("44.7 uas", "31.5 uas"), encoding="utf-8")
+    assert main(["compare", "observation.toml", "outputs/my-scan.h5"]) == 0
+    assert re.search("replaced: an earlier answer, .* ring diameter 44.7 ± 2.9 µas", capsys.readouterr().err)
+    (tmp_path / "outputs" / "my-observation.txt").write_text("precious")
+    assert "txt exists" in refused(capsys, "compare", "observation.toml", "outputs/my-scan.h5")
 
 
 def test_a_finished_scan_is_kept_and_said_to_be_there(scene, capsys, tmp_path):

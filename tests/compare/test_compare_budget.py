@@ -11,6 +11,7 @@ import pytest
 from scipy.stats import qmc
 from synthetic_scans import family_table, parameter, table_of
 
+from ringwright.comparing import formats
 from ringwright.comparing.answering import compare_numbers
 from ringwright.comparing.distributions import TwoPiece
 from ringwright.comparing.inputs import Observed
@@ -113,8 +114,10 @@ def test_the_line_for_a_paper_names_every_part():
     assert line.startswith("θ_g = ")
     for part in (
         "µas",
-        "; M = (",
-        "± measurement ± emission ± distance",
+        f"; M = {formats.mass(answer.ring_only.mass)} (±",
+        " measurement, ± ",
+        " emission, ± ",
+        " distance)",
         "× 10⁹ M☉",
         "68 %",
         "ring only",

@@ -20,6 +20,12 @@ def observed(value=42.0, error=3.0, resolution=(20.0,), **more):
     return Observed("made up", TwoPiece(value, error, error), resolution, **more)
 
 
+BASE = {
+    "view": {"inclination": 0.3},
+    "emitter": [{"opaque": False, "profile": {"outer": 50.0}, "spectral_index": 0.0}],
+}
+
+
 def codes(answer):
     return [item.code for item in answer.warnings]
 
@@ -28,6 +34,18 @@ def test_a_sound_comparison_has_no_warning():
     answer = compare_numbers(observed(), (family_table(),))
     assert codes(answer) == []
     assert "Warnings" not in summary(answer)
+
+
+def test_the_summary_gives_warnings_before_lists_and_words_for_keys():
+    answer = compare_numbers(observed(resolution=(32.0,)), (family_table(base=BASE),))
+    said = summary(answer)
+    places = [said.index(title) for title in ("Conversion", "\nWarnings", "\nPriors", "\nHeld", "\nCautions")]
+    assert places == sorted(places)
+    flat = " ".join(said.split())
+    assert "inner edge uniform from 2 M to 4 M; slope of brightness uniform from 3 to 5" in flat
+    assert "opaque: no; outer edge: 50; spectral index: 0" in flat
+    for raw in ("emitter.", "False", "view."):
+        assert raw not in said
 
 
 def test_few_scenes_are_warned_of_with_a_number_to_run():
@@ -105,7 +123,14 @@ def test_slips_of_digit_and_unit_are_warned_of():
 
 
 def test_a_posterior_cut_by_the_end_of_a_table_is_warned_of():
-    assert "table-end" in codes(compare_numbers(observed(), (family_table(lost=0.5),)))
+    cut = compare_numbers(observed(), (family_table(lost=0.5),))
+    whole = compare_numbers(observed(), (family_table(lost=0.8),))
+    said = next(item for item in cut.warnings if item.code == "table-end").text
+    # What it says is so: without the cut the answer reaches to smaller θ_g.
+    assert "the side of small θ_g is cut off" in said
+    assert "leans toward large ones" in said
+    assert whole.ring_only.theta_g.low95 < cut.ring_only.theta_g.low95
+    assert whole.ring_only.theta_g.value < cut.ring_only.theta_g.value
     ended = family_table(lost=0.5)
     count = ended.node_count - 1
     answer = compare_numbers(observed(), (family_table(lost=0.5, node_count=count),))

@@ -7,6 +7,7 @@ from __future__ import annotations
 
 import itertools
 import math
+from dataclasses import replace
 
 import numpy as np
 import pytest
@@ -15,6 +16,7 @@ from scipy.integrate import quad
 import emission as em
 import raytrace as rt
 import ringwright as rw
+from ringwright.errors import InputError
 from ringwright.profiling.cuts import radial_cut
 from ringwright.profiling.rings import LIMIT_DELAY, LIMIT_RATIO, ring_table
 from ringwright.sampling import sample_light
@@ -154,12 +156,35 @@ def test_flux_per_order_agrees_with_quadrature_of_rays(scene_of):
     assert found.fraction.sum() == pytest.approx(1.0)
 
 
-@pytest.mark.parametrize("inclination", [35.0, 80.0])
-def test_the_flux_of_the_table_is_that_of_the_light(scene_of, inclination):
+@pytest.mark.parametrize(("inclination", "count"), [(35.0, 128), (80.0, 512)])
+def test_fluxes_per_angle_add_up_to_the_flux_of_the_light(scene_of, inclination, count):
     scene = scene_of(inclination)
     light = sample_light(scene, accuracy=1e-7)
-    found = ring_table(scene, light, count=256)
-    assert found.flux == pytest.approx([part.series.flux() for part in light], rel=1e-6)
+    found = ring_table(scene, light, count=count)
+    assert found.angular_flux.mean(axis=1) * math.tau == pytest.approx(found.flux, rel=1e-6)
+    assert found.flux == pytest.approx([part.series.flux() for part in light], rel=1e-12)
+
+
+# Seen askew a few angles do not hold the light; an opaque disk hides order 1 besides, behind edges that a sum over equally
+# spaced angles finds to one step only.
+@pytest.mark.parametrize(
+    ("inclination", "more", "tolerance"), [(84.0, "", 1e-7), (60.0, "opaque = true", 2e-5)]
+)
+def test_fluxes_do_not_depend_on_how_many_position_angles_there_are(scene_of, inclination, more, tolerance):
+    scene = scene_of(inclination, inner=6.0, more=more)
+    light = sample_light(scene, accuracy=1e-6)
+    few, many = (ring_table(scene, light, count=count) for count in (4, 4096))
+    assert few.flux == pytest.approx(many.flux, rel=1e-12)
+    assert many.angular_flux.mean(axis=1) * math.tau == pytest.approx(few.flux, rel=tolerance)
+    assert abs(few.angular_flux[1].mean() * math.tau / few.flux[1] - 1.0) > 0.05
+
+
+@pytest.mark.parametrize("inclination", [0.0, 70.0])
+def test_a_disk_that_ends_at_the_circle_of_half_the_light_has_half_the_light(scene_of, inclination):
+    whole = table(scene_of(inclination, orders=1), count=4)
+    middle = whole.emitting_radius
+    part = table(scene_of(inclination, orders=1, outer=f"{middle:.12f}", name="inside"), count=4)
+    assert part.flux[0] == pytest.approx(0.5 * whole.flux[0], rel=1e-6)
 
 
 @pytest.mark.parametrize("inclination", [0.0, 50.0])
@@ -235,3 +260,60 @@ def test_two_layouts_of_panels_give_the_same_table(scene_of, write_scene):
     two = table(scene_of(60.0, text=split, name="split"))
     for name in ("peak", "mean", "width", "fwhm", "angular_flux"):
         assert getattr(two, name) == pytest.approx(getattr(one, name), rel=2e-6)
+
+
+@pytest.mark.parametrize("position_angle", [0.0, 90.0])
+def test_edge_on_rays_within_the_plane_are_left_out(scene_of, position_angle):
+    # At 90° exactly the rays toward ±α run in the plane of the disk and have no crossing.
+    found = table(scene_of(90.0, position_angle=position_angle), count=8, accuracy=1e-4)
+    assert np.isfinite(found.delay[1:]).all()
+    assert found.rotation[1:] == pytest.approx(math.pi, abs=1e-9)
+    assert np.all(found.flux > 0.0)
+
+
+def test_an_order_that_is_hidden_at_some_angles_says_at_how_many(scene_of):
+    found = table(
+        scene_of(70.0, inner=6.0, outer=15.0, orders=2, more="opaque = true"), count=32, accuracy=1e-4
+    )
+    dark = int(np.isnan(found.width[1]).sum())
+    assert 0 < dark < 32
+    assert np.all((found.angular_flux[1] == 0.0) == np.isnan(found.peak[1]))
+    assert f"order 1 is hidden by an opaque disk in front at {dark} of 32 position angles" in found.notes
+
+
+def test_an_order_in_which_nothing_shines_has_no_shape_and_says_so(scene_of):
+    scene = scene_of(30.0)
+    *light, last = sample_light(scene, accuracy=1e-4)
+    dark = replace(last, series=replace(last.series, coefficients=0.0 * last.series.coefficients))
+    found = ring_table(scene, [*light, dark], count=8)
+    assert found.notes == ("order 2 carries no light: nothing of the emitter is seen in it",)
+    assert np.isnan([found.peak[2], found.mean[2], found.width[2], found.fwhm[2]]).all()
+    assert found.flux[2] == found.flux_ratio[2] == 0.0
+    assert math.isnan(found.width_ratio[2])
+
+
+def test_half_maximum_points_are_those_that_rays_find(scene_of):
+    # Inclined, smooth edges: brightness traced ray by ray on a fine grid between the images of the disk's edges.
+    scene, angle = scene_of(50.0, edge=1.5, inner=3.0), 0.5 * math.pi
+    found = table(scene, count=8)
+    for order in range(3):
+        low, high = rt.isoradial(
+            np.array([3.0, 20.0]), order=order, angle=angle, inclination=scene.inclination
+        )
+        b = np.linspace(low, high, 20001)
+        hit = rt.trace(b * math.cos(angle), b * math.sin(angle), inclination=scene.inclination, orders=3)
+        seen = em.shade(scene.emitters[0][1], hit)[0, order]
+        above = b[seen >= 0.5 * seen.max()]
+        step = b[1] - b[0]
+        assert found.peak[order, 0] == pytest.approx(b[np.argmax(seen)], abs=step)
+        assert found.fwhm[order, 0] == pytest.approx(above[-1] - above[0] + step, abs=1.01 * step)
+        mean = np.sum(b * seen) / np.sum(seen)
+        spread = math.sqrt(np.sum((b - mean) ** 2 * seen) / np.sum(seen))
+        assert found.mean[order, 0] == pytest.approx(mean, abs=1e-5 * (high - low))
+        assert found.width[order, 0] == pytest.approx(spread, rel=1e-5)
+
+
+def test_light_from_infinity_has_no_table(write_scene):
+    scene = rw.load_scene(write_scene(emitters='[[emitter]]\nkind = "backdrop"\n', orders=1))
+    with pytest.raises(InputError, match="has no profile of its own"):
+        table(scene)

@@ -236,9 +236,8 @@ def _fwhm(lines: Sequence[Lines], marks: Array, half: Array) -> Array:
     inner, outer = np.argmax(above, axis=0), last - np.argmax(above[::-1], axis=0)
     ends = []
     for at, step in ((inner, -1), (outer, 1)):
+        # A neighbour on another piece is at the same distance: brightness jumps just there.
         beside = np.clip(at + step, 0, last)
-        # Where the neighbour lies on another piece brightness jumps just here.
-        beside = np.where(middle[beside, each] == middle[at, each], beside, at)
         ends.append(_crossing(lines, b[beside, each], b[at, each], middle[at, each], half))
     return ends[1] - ends[0]
 

@@ -207,16 +207,10 @@ def _coarse(observed: Observed, table: ScanTable, ring: Posterior) -> Caution | 
 
 
 def _table_end(observed: Observed, table: ScanTable, ring: Posterior) -> Caution | None:
-    if not observed.resolution:
-        return None
-    last, goes_on = _last_reading(table)
-    theta = max(observed.resolution) / np.where(last[0] > 0.0, last[0], np.nan)
-    d = observed.diameter
-    cut = (theta * last[1] - d.mode) / d.minus > -END_SIGMA
-    share = float(ring.shares()[cut].sum())
+    share = cut_share(observed, table, ring)
     if share <= END_SHARE:
         return None
-    lost = float(ring.shares()[cut & ~goes_on].sum()) > 0.5 * share
+    lost = _share_that_is_cut(observed, table, ring)[1] > 0.5 * share
     why = "the ring is lost at this resolution" if lost else "the table of the scan stops"
     remedy = (
         "Quote the lower ends with this caution; only an image of finer resolution, or knowledge that leaves such "
@@ -231,6 +225,22 @@ def _table_end(observed: Observed, table: ScanTable, ring: Posterior) -> Caution
         "the answer leans toward large ones.",
         remedy,
     )
+
+
+def cut_share(observed: Observed, table: ScanTable, ring: Posterior) -> float:
+    """Share of the posterior weight of scenes whose readings end just below the θ_g that fits."""
+    return _share_that_is_cut(observed, table, ring)[0]
+
+
+def _share_that_is_cut(observed: Observed, table: ScanTable, ring: Posterior) -> tuple[float, float]:
+    """The same, and the part of it where the ring is lost rather than the table at its end."""
+    if not observed.resolution:
+        return 0.0, 0.0
+    last, goes_on = _last_reading(table)
+    theta = max(observed.resolution) / np.where(last[0] > 0.0, last[0], np.nan)
+    d = observed.diameter
+    cut = (theta * last[1] - d.mode) / d.minus > -END_SIGMA
+    return float(ring.shares()[cut].sum()), float(ring.shares()[cut & ~goes_on].sum())
 
 
 def _last_reading(table: ScanTable) -> tuple[tuple[Array, Array], NDArray[np.bool_]]:

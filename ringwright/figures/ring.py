@@ -15,11 +15,12 @@ import numpy as np
 from matplotlib.axes import Axes
 from matplotlib.backends.backend_agg import FigureCanvasAgg
 from matplotlib.figure import Figure
+from matplotlib.image import AxesImage
 from matplotlib.patches import Annulus, Circle
 from numpy.typing import NDArray
 
 from ringwright.errors import InputError
-from ringwright.figures.sky import COLOUR_MAP, DPI, MARK, OUTLINE, mark_sky
+from ringwright.figures.sky import COLOUR_MAP, DPI, MARK, OUTLINE, mark_beam, mark_sky
 from ringwright.products import written_whole
 from ringwright.ring.measuring import at_resolution
 
@@ -43,17 +44,20 @@ def draw_ring(image: NDArray[np.float64], pixel: float, unit: str, ring: Any, pa
     """
     if image.ndim != 2:
         raise InputError(f"a picture shows an image with two axes; this array has {image.ndim}")
-    figure = Figure(figsize=(5.8, 6.4), facecolor="white")
+    figure = Figure(figsize=(6.6, 6.7), facecolor="white")
     FigureCanvasAgg(figure)
-    axes = figure.add_axes((0.125, 0.22, 0.845, 0.76))
+    axes = figure.add_axes((0.115, 0.25, 0.75, 0.74))
     shown = "M" if unit == "M" else "µas"
-    _show_light(axes, image, pixel, shown)
+    light = _show_light(axes, image, pixel, shown)
+    bar = figure.colorbar(light, cax=figure.add_axes((0.88, 0.25, 0.025, 0.74)))
+    bar.set_label("brightness, relative to the maximum")
     found = ring.outcome.has_diameter
     if found:
         _mark_ring(axes, ring)
     _frame(axes, image, pixel, ring if found else None)
     mark_sky(axes, shown)
-    figure.text(0.03, 0.128, _caption(ring, shown), fontsize=9, va="top", linespacing=1.5, color="#202020")
+    mark_beam(axes, float(ring.resolution.value), shown)
+    figure.text(0.03, 0.165, _caption(ring, shown), fontsize=9, va="top", linespacing=1.5, color="#202020")
     with written_whole(path) as temporary:
         figure.savefig(
             temporary, format="png", dpi=DPI, metadata={"Software": "ringwright", "Title": ring.name}
@@ -67,20 +71,21 @@ def picture(image: Any, ring: Any, path: str | Path) -> Path:
     return draw_ring(data, pixel, "uas" if ring.resolution.unit.physical_type == "angle" else "M", ring, path)
 
 
-def _show_light(axes: Axes, image: NDArray[np.float64], pixel: float, unit: str) -> None:
+def _show_light(axes: Axes, image: NDArray[np.float64], pixel: float, unit: str) -> AxesImage:
     ny, nx = image.shape
     edge_east, edge_north = 0.5 * nx * pixel, 0.5 * ny * pixel
-    axes.imshow(
-        image,
+    light = axes.imshow(
+        image / (float(image.max()) or 1.0),
         origin="lower",
         extent=(edge_east, -edge_east, -edge_north, edge_north),
         cmap=COLOUR_MAP,
         vmin=0.0,
-        vmax=float(image.max()) or 1.0,
+        vmax=1.0,
         interpolation="bicubic",
     )
     axes.set_xlabel(f"offset to the east [{unit}]")
     axes.set_ylabel(f"offset to the north [{unit}]")
+    return light
 
 
 def _mark_ring(axes: Axes, ring: Any) -> None:
@@ -151,6 +156,8 @@ def _caption(ring: Any, unit: str) -> str:
             f"{ring.name}, {at}",
             f"diameter {float(ring.diameter.value):.2f} {unit} ({spread}), width {shown}",
             f"asymmetry {ring.asymmetry:.3f}{bright}; {dark}",
+            f"solid: diameter{', dashed: width' if math.isfinite(width) else ''}, cross: centre"
+            f"{', tick: toward the brighter side' if bright else ''}",
             last,
         )
     )

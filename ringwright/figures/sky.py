@@ -1,4 +1,4 @@
-"""What every picture of the sky shares: the colour map, a scale bar, and the directions of north and east.
+"""What every picture of the sky shares: the colour map, a scale bar, the beam, and the directions of north and east.
 
 The map is perceptually uniform and readable without colour vision; marks are white with a dark outline.
 """
@@ -8,6 +8,7 @@ from __future__ import annotations
 import math
 
 from matplotlib.axes import Axes
+from matplotlib.patches import Circle
 from matplotlib.patheffects import withStroke
 
 COLOUR_MAP = "cividis"
@@ -59,6 +60,28 @@ def mark_sky(axes: Axes, unit: str) -> None:
         )
         place = corner[0] + along[0] * side, corner[1] + along[1] * side
         axes.text(*place, name, color=MARK, ha="center", va="center", fontsize=10, path_effects=OUTLINE)
+
+
+def mark_beam(axes: Axes, fwhm: float, unit: str) -> None:
+    """A disk as wide as the resolution (FWHM) at the upper left, with its width beside it."""
+    left, _ = axes.get_xlim()
+    bottom, top = axes.get_ylim()
+    side = top - bottom
+    centre = left - 0.05 * side - 0.5 * fwhm, top - 0.05 * side - 0.5 * fwhm
+    axes.add_patch(Circle(centre, 0.5 * fwhm, facecolor=MARK, alpha=0.35, edgecolor="none"))
+    axes.add_patch(
+        Circle(centre, 0.5 * fwhm, fill=False, edgecolor=MARK, linewidth=1.2, path_effects=OUTLINE)
+    )
+    axes.text(
+        centre[0] - 0.5 * fwhm - 0.02 * side,
+        centre[1],
+        f"resolution\n{fwhm:.4g} {unit} (FWHM)",
+        color=MARK,
+        ha="left",
+        va="center",
+        fontsize=9,
+        path_effects=OUTLINE,
+    )
 
 
 def _round_length(length: float) -> float:

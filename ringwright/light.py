@@ -1,14 +1,14 @@
 """The light of a scene ready to be shared among pixels: every sampled order on a fine grid of screen angles.
 
-What `ringwright.sampling` found becomes Chebyshev series across panels at equally spaced screen angles, fine
-enough that cubics between them add no error. Lengths in M, brightness in the emitters' own unit; fluxes are
-∫ I dα dβ in that unit times M².
+What `ringwright.sampling` found becomes the light held between the origin and any distance, as Chebyshev series
+across panels at equally spaced screen angles, fine enough that cubics between them add no error. Lengths in M,
+brightness in the emitters' own unit; fluxes are ∫ I dα dβ in that unit times M².
 """
 
 from __future__ import annotations
 
 import math
-from dataclasses import dataclass, replace
+from dataclasses import dataclass
 from functools import cache
 from typing import TYPE_CHECKING
 
@@ -17,7 +17,7 @@ from numpy.polynomial import chebyshev
 from numpy.typing import NDArray
 
 from raytrace.contract import Array
-from raytrace.panels import gauss_legendre
+from raytrace.panels import Band, gauss_legendre
 from raytrace.series import equally_spaced
 from ringwright.kernels.pixels import gather_light
 from ringwright.sampling import SampledLight, sample_light
@@ -28,8 +28,8 @@ if TYPE_CHECKING:
 # Angles per sampled angle, and the fewest, of the table that is interpolated by cubics: error below 1e-7.
 FINER_ANGLES = 4
 FEWEST_FINE_ANGLES = 512
-# Side in pixels of the throw-away image on which light that lower orders hide in part is added up.
-COVER_PIXELS = 64
+# Terms that multiplying by the distance and integrating add to a series.
+ADDED_TERMS = 2
 # Terms below this share of the accuracy asked for, relative to the largest, are dropped.
 NEGLIGIBLE = 0.03
 
@@ -43,23 +43,29 @@ class LitBand:
     order : int
     edges : array (panels + 1, n_angles)
         Panel edges against screen angle, from angle 0, padded by one before and two after [M].
+    held : array (panels + 1, n_angles)
+        Light per radian between the origin and each panel edge, nothing hidden.
     coefficients : array (panels, n_angles, m)
-        Chebyshev coefficients of the brightness across each panel.
+        Chebyshev coefficients of the light per radian between a panel's inner edge and a point in it.
     terms : int array (panels,)
         How many of them each panel needs for the accuracy asked for.
-    blockers : array (m, 2, n_angles)
+    fronts : array (f, 2, n_angles)
         Edges of the opaque crossings in front [M].
+    corners : array (c,)
+        Screen angles at which edges cross each other [rad].
     flux : float
-        All the light of this order, in or out of any field.
+        All the light of this order that is seen, in or out of any field.
     error : float
         Estimated error of the interpolated brightness, relative to its largest value.
     """
 
     order: int
     edges: Array
+    held: Array
     coefficients: Array
     terms: NDArray[np.int64]
-    blockers: Array
+    fronts: Array
+    corners: Array
     flux: float
     error: float
 
@@ -80,11 +86,12 @@ class LitBand:
             -0.5 * ny * pixel,
             turn,
             self.edges,
-            _limits(self.edges[[0, -1]]),
+            np.array([self.edges[0].min(), self.edges[-1].max()]),
+            self.held,
             self.coefficients,
             self.terms,
-            self.blockers,
-            _limits(self.blockers),
+            self.fronts,
+            self.corners,
         )
 
 
@@ -109,27 +116,48 @@ def lit_band(sampled: SampledLight, accuracy: float) -> LitBand:
     """One sampled order on a fine grid of angles."""
     band = sampled.series.band
     angles = max(FEWEST_FINE_ANGLES, FINER_ANGLES * len(band.angles))
-    edges = _padded(band.edges, angles)
-    blockers = [_padded(front, angles) for front in sampled.fronts]
     series = np.einsum("mq,pqj->pmj", chebyshev_transform(len(band.nodes)), sampled.series.values)
-    lit = LitBand(
+    within = _within_panels(series, band)
+    held = np.concatenate([np.zeros_like(within[:1, 0]), np.cumsum(within.sum(axis=1), axis=0)])
+    edges = _padded(band.edges, angles)
+    return LitBand(
         sampled.order,
         edges,
-        np.ascontiguousarray(np.moveaxis(_padded(series, angles), 1, 2)),
-        _needed_terms(series, NEGLIGIBLE * accuracy),
-        np.array(blockers).reshape(-1, 2, edges.shape[1]),
-        math.nan if sampled.boundless else sampled.series.flux(),
+        _padded(held, angles),
+        np.ascontiguousarray(np.moveaxis(_padded(within, angles), 1, 2)),
+        _needed_terms(series, NEGLIGIBLE * accuracy) + ADDED_TERMS,
+        np.array([_padded(front, angles) for front in sampled.fronts]).reshape(-1, 2, edges.shape[1]),
+        sampled.corners(),
+        _flux(sampled),
         sampled.error,
     )
-    return _with_hidden_light_removed(lit) if blockers else lit
 
 
-def _with_hidden_light_removed(lit: LitBand) -> LitBand:
-    """The same band with its flux added up on an image that covers it, where lower orders hide part of it."""
-    side = 2.0 * float(np.max(lit.edges[-1]))
-    cover = np.zeros((COVER_PIXELS, COVER_PIXELS))
-    lit.add_to(cover, side / COVER_PIXELS, 0.0)
-    return replace(lit, flux=float(np.sum(cover)))
+def _within_panels(series: Array, band: Band) -> Array:
+    """Chebyshev series (panels, m + 2, n_angles) of ∫ I b db from each panel's inner edge, from those of I.
+
+    By x T_m = (T_{m+1} + T_{|m−1|}) / 2 and the integrals of T_m (NIST DLMF 18.9.1, 18.17).
+    """
+    half = 0.5 * band.widths[:, None]
+    middle = 0.5 * (band.edges[1:] + band.edges[:-1])[:, None]
+    product = np.zeros((series.shape[0], series.shape[1] + 1, series.shape[2]))
+    product[:, :-1] = series * middle
+    product[:, 1:] += 0.5 * half * series
+    product[:, :-2] += 0.5 * half * series[:, 1:]
+    product[:, 1:2] += 0.5 * half * series[:, :1]
+    return np.asarray(half * chebyshev.chebint(product, lbnd=-1, axis=1), dtype=np.float64)
+
+
+def _flux(sampled: SampledLight) -> float:
+    """All the light that is seen; not known for light that only the field ends."""
+    if sampled.boundless:
+        return math.nan
+    if not sampled.fronts:
+        return sampled.series.flux()
+    from ringwright.lightwaves import visibility
+
+    at_zero = np.zeros(1)
+    return float(visibility(sampled, wavenumber=at_zero, turn=at_zero)[0].real)
 
 
 def _needed_terms(series: Array, share: float) -> NDArray[np.int64]:
@@ -152,8 +180,3 @@ def chebyshev_transform(count: int) -> Array:
     """Matrix (count, count) from values at the Gauss–Legendre nodes to Chebyshev coefficients."""
     points, _ = gauss_legendre(count)
     return np.asarray(np.linalg.inv(chebyshev.chebvander(points, count - 1)), dtype=np.float64)
-
-
-def _limits(edges: Array) -> Array:
-    """Least and greatest along the last axis."""
-    return np.stack([edges.min(axis=-1), edges.max(axis=-1)], axis=-1)

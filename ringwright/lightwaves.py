@@ -23,7 +23,6 @@ from numpy.typing import NDArray
 from raytrace.contract import Array
 from raytrace.kernels import threads
 from raytrace.panels import gauss_legendre
-from raytrace.roots import bracketed_roots
 from raytrace.series import BandSeries, equally_spaced, legendre_transform, trigonometric_weights
 from ringwright.errors import InputError
 from ringwright.kernels.fourier import add_panel
@@ -47,8 +46,6 @@ SAMPLES_AT_A_TIME = 1 << 20
 TRANSFORM_ACCURACY = 1e-13
 # Baselines integrated together have lengths within this factor and share one number of angles.
 BLOCK_RATIO = 1.25
-# Angles on which crossings of two edges are looked for, per sampled angle: edges that cross twice in between are missed.
-SEARCHED = 16
 # Gauss–Legendre nodes on a piece of an arc between crossings, and the radians of phase that one such piece may hold.
 ARC_NODES = 24
 ARC_PHASE = 14.0
@@ -236,7 +233,7 @@ def _times_distance(coefficients: Array, middle: Array, half: Array) -> Array:
 
 def _visible(light: SampledLight, panel: int, angles: int) -> list[Part]:
     """The parts of a panel that nothing opaque hides, at so many angles or, cut by something in front, more."""
-    crossings = _crossings(light, panel) if light.fronts else np.empty(0)
+    crossings = light.corners((panel, panel + 1))
     if not crossings.size:
         angle = math.tau / angles * np.arange(angles, dtype=np.float64)
         weight = np.full(angles, math.tau / angles)
@@ -271,26 +268,6 @@ def _at(rows: Array, angle: Array) -> Array:
     if angle.size >= rows.shape[-1] and angle[0] == 0.0 and angle[-1] == step * (angle.size - 1):
         return equally_spaced(rows, angle.size)
     return rows @ trigonometric_weights(rows.shape[-1], angle)
-
-
-def _crossings(light: SampledLight, panel: int) -> Array:
-    """Angles, ascending, at which an edge of something in front crosses an edge of a panel."""
-    band = light.series.band
-
-    def apart(front: Array, edge: int, angle: Array) -> Array:
-        offset = band.offsets[edge] @ trigonometric_weights(len(band.angles), angle)
-        return front @ trigonometric_weights(front.size, angle) - band.curve(angle) - offset
-
-    found = []
-    in_front = itertools.chain.from_iterable(light.fronts)
-    for front, edge in itertools.product(in_front, (panel, panel + 1)):
-        grid = np.linspace(0.0, math.tau, SEARCHED * max(front.size, len(band.angles)) + 1)
-        beyond = apart(front, edge, grid) > 0.0
-        at = np.flatnonzero(beyond[1:] != beyond[:-1])
-        found.append(
-            bracketed_roots(lambda phi, _, f=front, e=edge: apart(f, e, phi), grid[at], grid[at + 1])  # type: ignore[misc]
-        )
-    return np.unique(np.concatenate(found))
 
 
 def _arc(start: float, stop: float, angles: int) -> tuple[Array, Array]:

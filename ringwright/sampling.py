@@ -8,8 +8,10 @@ emitters' own unit times their strength; fluxes are ∫ I dα dβ in that unit t
 from __future__ import annotations
 
 import math
+from collections.abc import Sequence
 from dataclasses import dataclass
 from functools import partial
+from itertools import combinations, product
 from typing import TYPE_CHECKING
 
 import numpy as np
@@ -18,12 +20,15 @@ import emission as em
 import raytrace as rt
 from raytrace.contract import Array, Hit
 from raytrace.panels import NODES, Band, gauss_legendre, panel_radii
+from raytrace.roots import bracketed_roots
 from raytrace.screens import FEWEST_ANGLES, resolved
-from raytrace.series import BandSeries
+from raytrace.series import BandSeries, equally_spaced, trigonometric_weights
 
 if TYPE_CHECKING:
     from ringwright.scenes import Scene
 
+# Angles on which crossings of two edges are looked for, per sampled angle: edges that cross twice in between are missed.
+SEARCHED = 16
 # A backdrop reaches this much beyond the corner of the field.
 BEYOND_CORNER = 1.05
 
@@ -52,6 +57,42 @@ class SampledLight:
     fronts: tuple[Array, ...]
     error: float
     boundless: bool = False
+
+    def corners(self, edges: Sequence[int] = (0, -1)) -> Array:
+        """Screen angles, ascending, at which edges of opaque crossings in front cross each other or some of the
+        band's panel edges [rad].
+        """
+        if not self.fronts:
+            return np.empty(0)
+        band = self.series.band
+        count = SEARCHED * max(len(band.angles), *(front.shape[1] for front in self.fronts))
+        curves = [_Curve(row, count) for front in self.fronts for row in front]
+        own = [_Curve(band.edges[edge], count) for edge in edges]
+        pairs = [*combinations(curves, 2), *product(curves, own)]
+        return np.unique(np.concatenate([_crossings(one, other) for one, other in pairs]))
+
+
+class _Curve:
+    """An edge known at equally spaced angles, half a step off 0: on a fine grid, and anywhere."""
+
+    def __init__(self, row: Array, count: int) -> None:
+        self.row = row
+        fine = equally_spaced(row, count)
+        self.grid: Array = np.append(fine, fine[0])
+
+    def __call__(self, angle: Array) -> Array:
+        return np.asarray(self.row @ trigonometric_weights(self.row.size, angle), dtype=np.float64)
+
+
+def _crossings(one: _Curve, other: _Curve) -> Array:
+    """Angles at which two edges cross, found where their order changes on the grid."""
+    beyond = one.grid > other.grid
+    at = np.flatnonzero(beyond[1:] != beyond[:-1])
+    if not at.size:
+        return np.empty(0)
+    step = math.tau / (len(one.grid) - 1)
+    low = step * at.astype(np.float64)
+    return bracketed_roots(lambda angle, _: one(angle) - other(angle), low, low + step)
 
 
 def sample_light(scene: Scene, *, accuracy: float) -> tuple[SampledLight, ...]:

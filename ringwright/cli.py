@@ -92,6 +92,12 @@ def _add_render(verbs: argparse._SubParsersAction[argparse.ArgumentParser]) -> N
         "--maps", action="store_true", help="also store crossing radius, redshift factor and delay"
     )
     parser.add_argument("--fits", action="store_true", help="also write a FITS image with a celestial WCS")
+    parser.add_argument(
+        "--accuracy",
+        type=float,
+        default=1e-5,
+        help="interpolation error of brightness allowed (default: 1e-5)",
+    )
     _add_common(parser, "outputs/<scene name>.h5")
 
 

@@ -49,6 +49,10 @@ class Image:
         All the light of each order, and what the field holds; in the unit of `intensity`.
     band_width : array (order,)
         Median width of the ring that each order can reach [M].
+    accuracy : float or None
+        Interpolation error of brightness that was asked for, relative to the brightest point of each order.
+    interpolation_error : array (order,) or None
+        The same as reached, estimated; None in products written before it was kept.
     maps : dict of arrays (order, y, x)
         Crossing radius, redshift factor and delay at pixel centres, where asked for.
     notes : tuple of str
@@ -68,6 +72,8 @@ class Image:
     flux: Array
     flux_in_field: Array
     band_width: Array
+    accuracy: float | None = None
+    interpolation_error: Array | None = None
     maps: dict[str, Array] = field(default_factory=dict)
     notes: tuple[str, ...] = ()
     position: tuple[float, float] | None = None
@@ -132,7 +138,13 @@ class Image:
             attrs = dict(file["intensity"].attrs)
             order = [str(label) for label in (d.label for d in file["intensity"].dims)]
             axes = [order.index(name) for name in ("order", "y", "x")]
-            known = {"theta_g_uas", "frequency_hz", "right_ascension_deg", "declination_deg"}
+            known = {
+                "accuracy_asked",
+                "theta_g_uas",
+                "frequency_hz",
+                "right_ascension_deg",
+                "declination_deg",
+            }
             value = {key: float(attrs[key]) for key in known & attrs.keys()}
             sky = ("right_ascension_deg", "declination_deg")
             return Image(
@@ -146,6 +158,10 @@ class Image:
                 flux=file["flux"][...],
                 flux_in_field=file["flux_in_field"][...],
                 band_width=file["band_width"][...],
+                accuracy=value.get("accuracy_asked"),
+                interpolation_error=file["interpolation_error"][...]
+                if "interpolation_error" in file
+                else None,
                 maps={name: file[name][...].astype(np.float64) for name in MAPS if name in file},
                 notes=tuple(json.loads(str(attrs["notes"]))),
                 position=(value[sky[0]], value[sky[1]]) if sky[0] in value else None,
@@ -193,6 +209,10 @@ class Image:
             "pixel": {"value": float(self.pixel.value), "unit": str(self.pixel.unit) or "M"},
             "flux_per_order": {"value": self.flux.tolist(), "unit": unit},
             "flux_per_order_in_field": {"value": self.flux_in_field.tolist(), "unit": unit},
+            "accuracy_asked": self.accuracy,
+            "interpolation_error": None
+            if self.interpolation_error is None
+            else self.interpolation_error.tolist(),
             "notes": list(self.notes),
         }
 
@@ -225,6 +245,9 @@ class Image:
             ),
             "band_width": (self.band_width, "1", "median width of the ring of each order [GM/c^2]"),
         }
+        if self.interpolation_error is not None:
+            what = "estimated error of the brightness of each order over its maximum"
+            per_order["interpolation_error"] = (self.interpolation_error, "1", what)
         for name, (values, units, long_name) in per_order.items():
             dataset = file.create_dataset(name, data=values)
             dataset.attrs["units"], dataset.attrs["long_name"] = units, long_name
@@ -237,6 +260,8 @@ class Image:
             "position_angle_rad": self.position_angle,
             "notes": json.dumps(list(self.notes)),
         }
+        if self.accuracy is not None:
+            found["accuracy_asked"] = self.accuracy
         if self.theta_g_uas is not None:
             found["theta_g_uas"] = self.theta_g_uas
         if self.frequency_hz is not None:

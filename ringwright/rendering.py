@@ -20,6 +20,7 @@ from ringwright import products
 from ringwright.errors import InputError
 from ringwright.image import Image
 from ringwright.light import LitBand, light_up
+from ringwright.sampling import accuracy_note, check_accuracy
 from ringwright.scenes import Scene, load_scene
 
 # Interpolation error allowed, relative to the brightest point of each order.
@@ -52,12 +53,13 @@ def render(scene: Scene | str | Path, *, maps: bool = False, accuracy: float = A
     Raises
     ------
     InputError
-        If the scene has no light at all, or does not fit in memory.
+        If the scene has no light at all or does not fit in memory, or the accuracy is not one.
     SceneError
         If the scene file cannot be used.
     """
     if not isinstance(scene, Scene):
         scene = load_scene(scene)
+    check_accuracy(accuracy)
     _check_memory(scene, maps)
     bands = light_up(scene, accuracy=accuracy)
     stack = np.zeros((scene.orders, scene.pixels, scene.pixels))
@@ -83,6 +85,8 @@ def render(scene: Scene | str | Path, *, maps: bool = False, accuracy: float = A
         flux_in_field=in_field,
         band_width=width,
         maps=_maps(scene) if maps else {},
+        accuracy=accuracy,
+        interpolation_error=_errors(bands, scene.orders),
         notes=_notes(scene, bands, flux * scale, in_field, width, accuracy),
         position=_position(scene),
         provenance=products.provenance(scene.text, scene.resolved()),
@@ -112,6 +116,11 @@ def _widths(bands: tuple[LitBand, ...], orders: int) -> Array:
     return np.where(np.isfinite(width), width, 0.0)
 
 
+def _errors(bands: tuple[LitBand, ...], orders: int) -> Array:
+    """Estimated interpolation error of each order relative to its brightest point."""
+    return np.array([max((lit.error for lit in bands if lit.order == n), default=0.0) for n in range(orders)])
+
+
 def _notes(
     scene: Scene, bands: tuple[LitBand, ...], flux: Array, in_field: Array, width: Array, accuracy: float
 ) -> tuple[str, ...]:
@@ -130,12 +139,7 @@ def _notes(
                 f"the ring of order {order} is {width[order]:.2g} M wide, {width[order] / pixel:.2g} of a pixel: "
                 "its flux is right, its profile is not resolved"
             )
-    worst = max((lit.error for lit in bands), default=0.0)
-    if worst > accuracy:
-        found.append(
-            f"the brightness is interpolated to {worst:.1g} of its maximum, not to the {accuracy:.1g} asked for"
-        )
-    return tuple(found)
+    return (*found, *accuracy_note((lit.error for lit in bands), accuracy))
 
 
 def _maps(scene: Scene) -> dict[str, Array]:

@@ -8,7 +8,7 @@ emitters' own unit times their strength; fluxes are ∫ I dα dβ in that unit t
 from __future__ import annotations
 
 import math
-from collections.abc import Sequence
+from collections.abc import Iterable, Sequence
 from dataclasses import dataclass
 from functools import partial
 from itertools import combinations, product
@@ -23,12 +23,17 @@ from raytrace.panels import NODES, Band, gauss_legendre, panel_radii
 from raytrace.roots import bracketed_roots
 from raytrace.screens import FEWEST_ANGLES, resolved
 from raytrace.series import BandSeries, equally_spaced, trigonometric_weights
+from ringwright.errors import InputError
 
 if TYPE_CHECKING:
     from ringwright.scenes import Scene
 
 # Angles on which crossings of two edges are looked for, per sampled angle: edges that cross twice in between are missed.
 SEARCHED = 16
+# Accuracies that can be asked for: rounding is near the one, nothing is left of a picture at the other.
+FINEST, COARSEST = 1e-12, 0.1
+# Estimated errors add up several tails, each below what was asked for; a word is due beyond this multiple of it.
+SLACK = 3.0
 # A backdrop reaches this much beyond the corner of the field.
 BEYOND_CORNER = 1.05
 
@@ -93,6 +98,30 @@ def _crossings(one: _Curve, other: _Curve) -> Array:
     step = math.tau / (len(one.grid) - 1)
     low = step * at.astype(np.float64)
     return bracketed_roots(lambda angle, _: one(angle) - other(angle), low, low + step)
+
+
+def check_accuracy(accuracy: float) -> float:
+    """An accuracy that can be asked for, or a sentence.
+
+    Raises
+    ------
+    InputError
+        If it is not a number from 1e-12 to 0.1.
+    """
+    if not FINEST <= accuracy <= COARSEST:
+        raise InputError(
+            f"an accuracy of {accuracy:g} is not a relative error from {FINEST:g} to {COARSEST:g}; 1e-5 suits pictures, 1e-7 "
+            "photon rings"
+        )
+    return float(accuracy)
+
+
+def accuracy_note(errors: Iterable[float], accuracy: float) -> tuple[str, ...]:
+    """A sentence where brightness could not be interpolated to what was asked for; nothing where it could."""
+    worst = max(errors, default=0.0)
+    if worst <= SLACK * accuracy:
+        return ()
+    return (f"brightness is interpolated to {worst:.1g} of its maximum, not to the {accuracy:.1g} asked for",)
 
 
 def sample_light(scene: Scene, *, accuracy: float) -> tuple[SampledLight, ...]:

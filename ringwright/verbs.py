@@ -27,10 +27,12 @@ def render(options: argparse.Namespace) -> int:
     products.check_target(target, KIND, scene.name, replace=options.replace)
     for suffix in (".png", ".fits") if options.fits else (".png",):
         products.check_companion(target.with_suffix(suffix), scene.name, replace=options.replace)
-    image = render_scene(scene, maps=options.maps)
+    image = render_scene(scene, maps=options.maps, accuracy=options.accuracy)
+    earlier = _earlier(target, image.provenance)
     written = [image.save(target, replace=options.replace), draw_image(image, target.with_suffix(".png"))]
     if options.fits:
         written.append(image.to_fits(target.with_suffix(".fits"), replace=True))
+    _print_all("replaced", earlier)
     if options.json:
         print_json({**image.summary(), "files": [str(path) for path in written]})
         return DONE
@@ -155,11 +157,11 @@ def compare(options: argparse.Namespace) -> int:
     answer = compare_ring(observation, *options.scans)
     earlier = earlier_answer(answer, stem)
     written = [write_report(answer, stem), *draw_comparison(answer, stem)]
+    _print_all("replaced", [f"an earlier answer, {earlier}"] if earlier else [])
     if options.json:
         print_json({**answer.to_json(), "files": [str(path) for path in written]})
         return DONE
     print(summary(answer))
-    _print_all("replaced", [f"an earlier answer, {earlier}"] if earlier else [])
     _print_all("wrote", written)
     return DONE
 
@@ -178,6 +180,15 @@ def schema(options: argparse.Namespace) -> int:
 
     print_json(scene_schema())
     return DONE
+
+
+def _earlier(target: Path, provenance: dict[str, Any]) -> list[str]:
+    """That a product made of something else stands at the target, which is about to be replaced."""
+    try:
+        other = products.differences(target, provenance)
+    except OSError:  # nothing there, or no product
+        return []
+    return [f"an earlier {target}, which differed in {', '.join(other)}"] if other else []
 
 
 def _ring_picture(path: str, ring: Any, replace: bool) -> Path:

@@ -24,7 +24,7 @@ from ringwright.profiling.fringes import Fringes, View, fringes, nulls, trusted_
 from ringwright.profiling.rings import RingTable, ring_table
 from ringwright.profiling.sight import Carrier, FirstSight, carriers, first_sight
 from ringwright.profiling.spacing import Spacing, ring_diameters
-from ringwright.sampling import SampledLight, sample_light
+from ringwright.sampling import SampledLight, accuracy_note, check_accuracy, sample_light
 from ringwright.scenes import Scene, load_scene
 from ringwright.units import parse
 
@@ -38,8 +38,6 @@ SENSITIVITY = "1 mJy"
 FRINGED = (1, 2)
 # Share of the envelope that the numerical error may have before a baseline counts as beyond the accuracy.
 TRUSTED_SHARE = 0.01
-# Estimated errors add up several tails; only beyond this multiple of what was asked for is a word due.
-ACCURACY_SLACK = 3.0
 MOST_ORDERS, MOST_ANGLES = 8, 4096
 
 
@@ -167,7 +165,7 @@ def profile(
     rings = ring_table(scene, light, count=angles, emitting_radius=radius, scale=scale)
     cut_angle = np.concatenate([directions, directions + math.pi])
     unit = "" if scene.total_flux is None else "Jy"
-    notes = [*rings.notes, *_accuracy_notes(light, accuracy)]
+    notes = [*rings.notes, *accuracy_note((part.error for part in light), accuracy)]
     view = _view(scene, scale)
     seen: dict[str, Any] = {
         "fringes": None,
@@ -208,8 +206,7 @@ def _with_orders(scene: Scene, orders: int, angles: int, accuracy: float) -> Sce
     for name, value, most in (("orders", orders, MOST_ORDERS), ("angles", angles, MOST_ANGLES)):
         if int(value) != value or not 1 <= value <= most:
             raise InputError(f"{name} = {value} is not a whole number from 1 to {most}")
-    if not 1e-12 <= accuracy <= 0.1:
-        raise InputError(f"an accuracy of {accuracy:g} is not a relative error from 1e-12 to 0.1")
+    check_accuracy(accuracy)
     for _, emitter in scene.emitters:
         if not emitter.edges:
             raise InputError(
@@ -320,13 +317,6 @@ def _seen(
         else None,
         "trusted": trusted_baseline(found, TRUSTED_SHARE),
     }
-
-
-def _accuracy_notes(light: Sequence[SampledLight], accuracy: float) -> list[str]:
-    worst = max(part.error for part in light)
-    if worst <= ACCURACY_SLACK * accuracy:
-        return []
-    return [f"brightness is interpolated to {worst:.1g} of its maximum, not to the {accuracy:.1g} asked for"]
 
 
 def _trust_note(trusted: float, longest: float) -> list[str]:

@@ -75,9 +75,7 @@ class FirstSight:
         return self.length / EARTH_DIAMETER
 
 
-def carriers(
-    found: Fringes, view: View, light: Sequence[SampledLight], width: Array
-) -> tuple[Carrier, ...]:
+def carriers(found: Fringes, view: View, light: Sequence[SampledLight], width: Array) -> tuple[Carrier, ...]:
     """From which baseline on each order carries the envelope, or why it never does.
 
     Parameters
@@ -98,7 +96,9 @@ def carriers(
             ]
         )
         never = np.isnan(baseline).any()
-        answers.append(Carrier(order, baseline, flux, _reason(found, order, light, resolved) if never else ""))
+        answers.append(
+            Carrier(order, baseline, flux, _reason(found, order, light, resolved) if never else "")
+        )
     return tuple(answers)
 
 

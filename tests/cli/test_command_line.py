@@ -48,6 +48,16 @@ def test_render_prints_one_json_object_and_writes_fits_and_maps(scene, capsys, t
     assert main(["render", scene, "--fits", "--out", "x.h5"]) == 0  # our own files are replaced
 
 
+def test_a_replaced_image_of_another_file_is_told(scene, capsys, tmp_path):
+    for edited, told in ((False, False), (False, False), (True, True)):
+        path = tmp_path / "seen.toml"
+        path.write_text(path.read_text().replace("30 deg", "31 deg" if edited else "30 deg"))
+        assert main(["render", scene]) == 0
+        assert (
+            "replaced: an earlier outputs/seen.h5, which differed in its file" in capsys.readouterr().err
+        ) == told
+
+
 def test_foreign_files_are_kept(scene, capsys, tmp_path):
     for name in ("x.h5", "x.png", "x.fits"):
         for old in tmp_path.glob("x.*"):

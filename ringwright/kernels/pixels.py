@@ -155,19 +155,20 @@ def _between(start, stop, line, horizontal, turn, edges, held, coefficients, ter
     step = TURN / (edges.shape[1] - PADDING)
     pieces = max(1, math.ceil(abs(stop - start) / step))
     total = 0.0
+    a = start
     for i in range(pieces):
-        a = start + (stop - start) * i / pieces
         z = start + (stop - start) * (i + 1) / pieces
-        for k in range(corners.shape[0]):
-            # Corners ascend within one turn; those in this stretch are taken in the order of the walk.
-            corner = corners[k if z > a else corners.shape[0] - 1 - k] + turn
-            corner += TURN * math.floor((0.5 * (a + z) - corner) / TURN + 0.5)
-            if min(a, z) < corner < max(a, z):
-                total += _stretch(
-                    a, corner, line, horizontal, turn, edges, held, coefficients, terms, fronts, weights
-                )
-                a = corner
-        total += _stretch(a, z, line, horizontal, turn, edges, held, coefficients, terms, fronts, weights)
+        while a != z:
+            end = z
+            for k in range(corners.shape[0]):
+                corner = corners[k] + turn
+                corner += TURN * math.floor((0.5 * (a + z) - corner) / TURN + 0.5)
+                if min(a, end) < corner < max(a, end):
+                    end = corner
+            total += _stretch(
+                a, end, line, horizontal, turn, edges, held, coefficients, terms, fronts, weights
+            )
+            a = end
     return total
 
 
@@ -189,15 +190,18 @@ def _segment(
     foot = math.atan2(line, 0.0) if horizontal else math.atan2(0.0, line)
     start = foot + (-math.atan(low / line) if horizontal else math.atan(low / line))
     stop = foot + (-math.atan(high / line) if horizontal else math.atan(high / line))
-    if low < 0.0 < high:
-        return _between(
-            start, foot, line, horizontal, turn, edges, held, coefficients, terms, fronts, corners, weights
-        ) + _between(
-            foot, stop, line, horizontal, turn, edges, held, coefficients, terms, fronts, corners, weights
+    total = 0.0
+    for half in range(2):
+        a = start if half == 0 else foot
+        z = stop if half == 1 else foot
+        if low >= 0.0 or high <= 0.0:
+            if half == 1:
+                break
+            z = stop
+        total += _between(
+            a, z, line, horizontal, turn, edges, held, coefficients, terms, fronts, corners, weights
         )
-    return _between(
-        start, stop, line, horizontal, turn, edges, held, coefficients, terms, fronts, corners, weights
-    )
+    return total
 
 
 @kernel()
@@ -246,55 +250,40 @@ def gather_light(
     rows, columns = image.shape
     half = 0.5 * pixel
     most = np.max(held[-1])
-    sides = np.empty((rows + 1, columns))
+    # Sides of all the pixels: those that run along x, and those that run along y.
+    sides = np.zeros((2, rows + 1, columns + 1))
     for row in numba.prange(rows + 1):
         weights = np.empty(4)
-        for column in range(columns):
+        y = first_y + row * pixel
+        for column in range(columns + 1):
             x = first_x + column * pixel
-            sides[row, column] = _segment(
-                first_y + row * pixel,
-                x,
-                x + pixel,
-                True,
-                limits,
-                turn,
-                edges,
-                held,
-                coefficients,
-                terms,
-                fronts,
-                corners,
-                weights,
-            )
+            for along in range(2):
+                low = y if along else x
+                sides[along, row, column] = _segment(
+                    x if along else y,
+                    low,
+                    low + pixel,
+                    along == 0,
+                    limits,
+                    turn,
+                    edges,
+                    held,
+                    coefficients,
+                    terms,
+                    fronts,
+                    corners,
+                    weights,
+                )
     for row in numba.prange(rows):
         weights = np.empty(4)
-        low = first_y + row * pixel
-        before = 0.0
-        for column in range(columns + 1):
-            here = _segment(
-                first_x + column * pixel,
-                low,
-                low + pixel,
-                False,
-                limits,
-                turn,
-                edges,
-                held,
-                coefficients,
-                terms,
-                fronts,
-                corners,
-                weights,
-            )
-            if column > 0:
-                x, y = first_x + (column - 0.5) * pixel, low + half
-                nearest = math.hypot(max(abs(x) - half, 0.0), max(abs(y) - half, 0.0))
-                farthest = math.hypot(abs(x) + half, abs(y) + half)
-                if nearest < limits[1] and farthest > limits[0]:
-                    light = sides[row, column - 1] + here - sides[row + 1, column - 1] - before
-                    behind = most * min(TURN, 2.0 * pixel / max(nearest, half))
-                    if abs(light) > NEARLY_DARK * behind or not _all_dark(
-                        x, y, half, turn, edges, fronts, weights
-                    ):
-                        image[row, column - 1] += light
-            before = here
+        y = first_y + (row + 0.5) * pixel
+        for column in range(columns):
+            x = first_x + (column + 0.5) * pixel
+            nearest = math.hypot(max(abs(x) - half, 0.0), max(abs(y) - half, 0.0))
+            if nearest >= limits[1] or math.hypot(abs(x) + half, abs(y) + half) <= limits[0]:
+                continue
+            light = sides[0, row, column] - sides[0, row + 1, column]
+            light += sides[1, row, column + 1] - sides[1, row, column]
+            behind = most * min(TURN, 2.0 * pixel / max(nearest, half))
+            if abs(light) > NEARLY_DARK * behind or not _all_dark(x, y, half, turn, edges, fronts, weights):
+                image[row, column] += light

@@ -89,12 +89,15 @@ def _baselines(profile: Profile) -> list[str]:
             if carrier.order == 0:
                 continue
             place, flux = carrier.baseline[row], carrier.flux[row]
-            answer = (
-                carrier.reason
-                if np.isnan(place)
-                else f"from {place / 1e9:.4g} Gλ, where {_flux(profile, flux)} is left"
+            if np.isnan(place):
+                lines.append(
+                    f"  order {carrier.order} has more than half of the envelope on none of them ({carrier.reason})"
+                )
+                continue
+            left = _flux(profile, flux)
+            lines.append(
+                f"  order {carrier.order} has more than half of the envelope from {place / 1e9:.4g} Gλ, where {left} is left"
             )
-            lines.append(f"  order {carrier.order} has more than half of the envelope {answer}")
     lines += _diameters(profile)
     if profile.first_sight is not None:
         sentence = profile.first_sight.sentence

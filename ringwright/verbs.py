@@ -158,6 +158,8 @@ def compare(options: argparse.Namespace) -> int:
     earlier = earlier_answer(answer, stem)
     written = [write_report(answer, stem), *draw_comparison(answer, stem)]
     _print_all("replaced", [f"an earlier answer, {earlier}"] if earlier else [])
+    stale = [path for path in targets(stem) if path not in written and path.exists()]
+    _print_all("note", [f"{path} was not drawn again and shows an earlier answer" for path in stale])
     if options.json:
         print_json({**answer.to_json(), "files": [str(path) for path in written]})
         return DONE

@@ -180,6 +180,11 @@ def test_from_starter_files_to_a_mass(capsys, monkeypatch, tmp_path):
     (tmp_path / "observation.toml").write_text(text.replace("44.7 uas", "31.5 uas"), encoding="utf-8")
     assert main(["compare", "observation.toml", "outputs/my-scan.h5"]) == 0
     assert re.search("replaced: an earlier answer, .* ring diameter 44.7 ± 2.9 µas", capsys.readouterr().err)
+    (tmp_path / "observation.toml").write_text(text.replace('"20 uas"', '"2000 uas"'), encoding="utf-8")
+    assert (
+        main(["compare", "observation.toml", "outputs/my-scan.h5"]) == 0
+    )  # nothing fits, so nothing is drawn
+    assert capsys.readouterr().err.count("was not drawn again and shows an earlier answer") == 3
     (tmp_path / "outputs" / "my-observation.txt").write_text("precious")
     assert "txt exists" in refused(capsys, "compare", "observation.toml", "outputs/my-scan.h5")
 

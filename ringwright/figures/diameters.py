@@ -15,7 +15,18 @@ from ringwright.comparing.inputs import Observed
 from ringwright.comparing.likelihood import closed_rings, read, unsmoothed
 from ringwright.comparing.results import Comparison
 from ringwright.comparing.wording import resolution
-from ringwright.figures.families import BINS, OBSERVED, QUIET, SMALL, Array, bar, fitting, framed, plain, span
+from ringwright.figures.families import (
+    BINS,
+    OBSERVED,
+    SMALL,
+    Array,
+    bar,
+    caption,
+    fitting,
+    framed,
+    plain,
+    span,
+)
 from ringwright.scanning.table import ScanTable
 
 CURVE_POINTS = 61
@@ -43,10 +54,10 @@ def diameters(comparison: Comparison) -> Figure:
     several = len(fitting(comparison)) > 1
     bars = "68 %; their heights part the families" if several else "68 % (thick) and 95 % (thin)"
     note = (
-        "Line and band: median and 68 % of the scenes that show a ring; they end where the ring of nearly all is lost.\n"
-        f"Dot and bar: median of θ$_g$ of the ring alone, {bars}."
+        "Line and band: median and 68 % of the scenes that show a ring; they end where nearly all lose it.\n"
+        f"Dot and bar: median of θ_g of the ring alone, {bars}."
     )
-    figure.supxlabel(note, x=0.012, ha="left", fontsize=SMALL, color=QUIET)
+    caption(figure, note)
     return figure
 
 

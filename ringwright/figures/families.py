@@ -6,6 +6,7 @@ where the scenes happen to lie. Bars are medians with equal-tailed 68 % (thick) 
 
 from __future__ import annotations
 
+import textwrap
 from typing import Any
 
 import numpy as np
@@ -28,6 +29,7 @@ PLOTTED_TAIL = 1e-3  # probability left out at either end of an axis
 MARGIN = 0.05  # of an axis beyond that, so that a distribution is seen to end
 BINS = 40
 SMALL = 8.5
+TITLE_CHARACTERS, CAPTION_CHARACTERS = 12.0, 15.6  # in an inch of a line, at their sizes
 
 
 def fitting(comparison: Comparison) -> list[tuple[FamilyAnswer, str]]:
@@ -39,8 +41,20 @@ def fitting(comparison: Comparison) -> list[tuple[FamilyAnswer, str]]:
 def framed(width: float, height: float, title: str) -> Figure:
     """An empty figure [inches] with its title at the upper left."""
     figure = Figure(figsize=(width, height), facecolor="white", layout="constrained")
-    figure.suptitle(title.replace("θ_g", "θ$_g$"), fontsize=10.5, x=0.012, ha="left")
+    lines = wrapped(title, width, TITLE_CHARACTERS)
+    figure.suptitle(lines.replace("θ_g", "θ$_g$"), fontsize=10.5, x=0.012, ha="left")
     return figure
+
+
+def caption(figure: Figure, text: str) -> None:
+    """Small print below everything."""
+    lines = wrapped(text, figure.get_figwidth(), CAPTION_CHARACTERS)
+    figure.supxlabel(lines.replace("θ_g", "θ$_g$"), x=0.012, ha="left", fontsize=SMALL, color=QUIET)
+
+
+def wrapped(text: str, width: float, per_inch: float) -> str:
+    """Lines broken to a width [inches]."""
+    return "\n".join(textwrap.fill(line, int(per_inch * width)) for line in text.splitlines())
 
 
 def plain(axes: Axes) -> None:

@@ -23,9 +23,9 @@ from ringwright.figures.families import (
     ALL,
     BINS,
     PRIOR,
-    QUIET,
     SMALL,
     bar,
+    caption,
     fitting,
     framed,
     plain,
@@ -65,7 +65,7 @@ def posteriors(comparison: Comparison) -> Figure:
     for column, (name, rows) in enumerate(zip(quantities, columns, strict=True)):
         _column(panels[:, column], comparison, name, rows)
     panels[0, 0].set_ylabel("probability density,\nhighest step = 1")
-    figure.supxlabel(_caption(comparison), x=0.012, ha="left", fontsize=SMALL, color=QUIET)
+    caption(figure, _caption(comparison))
     return figure
 
 
@@ -128,16 +128,17 @@ def _intervals(axes: Axes, rows: list[Row], scale: float, unit: str) -> None:
 def _caption(comparison: Comparison) -> str:
     """How to read it, and which families are cut where their ring is lost."""
     several = len(fitting(comparison)) > 1
-    shown = ", of the ring alone and of the prior" if several else ""
+    prior = "" if comparison.curves.theta_g_prior is None else " and of the prior"
+    shown = f", of the ring alone{prior}" if several else ""
     lines = [
-        f"Steps: {BINS} over the axis{shown}. Bars: median, 68 % (thick) and 95 % (thin) of the ring alone, unless said."
+        f"Steps: {BINS} over the axis{shown}. Bars: median, 68 % (thick) and 95 % (thin), ring alone unless said."
     ]
     for family, _ in fitting(comparison):
         assert family.posterior is not None
         share = cut_share(comparison.observation, family.table, family.posterior)
         if share > END_SHARE:
             lines.append(
-                f"{family.family}: {100 * share:.0f} % of the posterior weight is cut on the side of small θ$_g$, "
+                f"{family.family}: {100 * share:.0f} % of the posterior weight is cut on the side of small θ_g, "
                 "where the readings end."
             )
     return "\n".join(lines)

@@ -25,7 +25,9 @@ from raytrace.series import BandSeries
 FEWEST_ANGLES = 16
 MOST_ANGLES = 2048
 MOST_NODES = 48
-# Twice the samples should leave less than this share of a tail; where they do not, it is rounding.
+# Where tails are this small, twice the samples should leave less than this share of one; else it is rounding. Larger tails
+# may well grow before they fall: structure is not seen until it is resolved.
+SMALL_TAIL = 1e-6
 STALLED = 0.7
 # The brightness on which the screen is judged: as steep as emission near the hole usually is.
 TEST_SLOPE = 3.0
@@ -177,8 +179,9 @@ def resolved(
         series = BandSeries.of(sampled, brightness(sampled))
         tails = series.tails()
         nodes, angles = len(sampled.nodes), len(sampled.angles)
-        more_nodes = tolerance < tails[0] < STALLED * before[0] and nodes < MOST_NODES
-        more_angles = tolerance < tails[1] < STALLED * before[1] and angles < MOST_ANGLES
+        helps = [tail > SMALL_TAIL or tail < STALLED * last for tail, last in zip(tails, before, strict=True)]
+        more_nodes = tails[0] > tolerance and helps[0] and nodes < MOST_NODES
+        more_angles = tails[1] > tolerance and helps[1] and angles < MOST_ANGLES
         if not more_nodes and not more_angles:
             return series
         before = (tails[0] if more_nodes else before[0], tails[1] if more_angles else before[1])

@@ -123,3 +123,8 @@ def test_samples_come_back_from_their_series():
     band = rt.screen(inclination=0.5, edges=(4.0, 10.0), orders=1).bands[0]
     values = 1.0 / band.distance
     assert BandSeries.of(band, values).values == pytest.approx(values, rel=1e-13)
+
+
+def test_steep_views_are_refined_although_their_tails_grow_at_first():
+    screen = rt.screen(inclination=math.radians(88.5), edges=(2.6, 20.0), orders=2, tolerance=1e-3)
+    assert np.all(screen.error < 3e-3)

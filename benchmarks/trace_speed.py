@@ -81,7 +81,7 @@ def measure(field: float) -> tuple[float, float]:
     }
     runs["reference, radius"] = lambda: crossing_radius(alpha, beta, INCLINATION, ORDERS)
     times = nanoseconds(alpha.size, runs)
-    print(f"screen of {field:g} M, {SIDE}² rays, {numba.get_num_threads()} cores")
+    print(f"screen of {field:g} M, {SIDE}² rays, {numba.config.NUMBA_NUM_THREADS} cores")
     for name, value in times.items():
         print(f"  {name:20} {value:8.1f} ns per ray")
     return times["radius"], times["reference, radius"] / times["radius"]
@@ -96,7 +96,7 @@ def main() -> int:
     if "--small" in sys.argv:
         print(f"both agree to {worst:.1e} in 1/r")
         return 0
-    numba.set_num_threads(min(CORES, numba.config.NUMBA_NUM_THREADS))
+    numba.config.NUMBA_NUM_THREADS = min(CORES, numba.config.NUMBA_NUM_THREADS)
     times, ratios = zip(*(measure(field) for field in FIELDS), strict=True)
     slowest, least = max(times), min(ratios)
     print("figure | required | reached | met")

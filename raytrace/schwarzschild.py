@@ -16,6 +16,8 @@ from numpy.typing import ArrayLike, NDArray
 from raytrace.contract import Array, CircularOrbit, Hit, Metric
 
 CRITICAL_RADIUS = math.sqrt(27.0)
+# Rays that are worth a thread: about a millisecond each way.
+FEWEST_RAYS, FEWEST_IN_LANES = 1024, 8192
 # |cos i| below this is an exactly edge-on view: half a unit in the last place of π/2.
 EDGE_ON = 1e-16
 
@@ -128,8 +130,7 @@ def _crossings(
     from raytrace.kernels.schwarzschild import trace_rays
 
     found = _blank(orders, x.size, azimuth, delay, momentum)
-    with threads.LOCK:
-        trace_rays(x, y, cosine, sine, *found)
+    threads.in_blocks(lambda a, b: trace_rays(a, b, x, y, cosine, sine, *found), x.size, least=FEWEST_RAYS)
     return found
 
 
@@ -139,8 +140,10 @@ def _radii(x: Array, y: Array, cosine: float, sine: float, orders: int) -> _Foun
     from raytrace.kernels.lanes import LEFT, crossing_radii
 
     found = _blank(orders, x.size, False, False, False)
-    with threads.LOCK:
-        crossing_radii(x, y, cosine, sine, found.radius, found.status, found.fate)
+    filled = found.radius, found.status, found.fate
+    threads.in_blocks(
+        lambda a, b: crossing_radii(a, b, x, y, cosine, sine, *filled), x.size, least=FEWEST_IN_LANES
+    )
     left = np.flatnonzero(found.fate == LEFT)
     if left.size:
         rest = _crossings(x[left], y[left], cosine, sine, orders, False, False, False)

@@ -17,9 +17,10 @@ from numpy.polynomial import chebyshev
 from numpy.typing import NDArray
 
 from raytrace.contract import Array
+from raytrace.kernels.threads import in_blocks
 from raytrace.panels import Band, gauss_legendre
 from raytrace.series import equally_spaced
-from ringwright.kernels.pixels import gather_light
+from ringwright.kernels.pixels import gather_light, integrate_sides
 from ringwright.sampling import SampledLight, sample_light
 
 if TYPE_CHECKING:
@@ -30,6 +31,8 @@ FINER_ANGLES = 4
 FEWEST_FINE_ANGLES = 512
 # Terms that multiplying by the distance and integrating add to a series.
 ADDED_TERMS = 2
+# Rows of an image that are worth a thread.
+FEWEST_ROWS = 8
 # Terms below this share of the accuracy asked for, relative to the largest, are dropped.
 NEGLIGIBLE = 0.03
 
@@ -79,19 +82,14 @@ class LitBand:
         [rad].
         """
         ny, nx = image.shape
-        gather_light(
-            image,
-            pixel,
-            -0.5 * nx * pixel,
-            -0.5 * ny * pixel,
-            turn,
-            self.edges,
-            np.array([self.edges[0].min(), self.edges[-1].max()]),
-            self.held,
-            self.coefficients,
-            self.terms,
-            self.fronts,
-            self.corners,
+        sides = np.zeros((2, ny + 1, nx + 1))
+        limits = np.array([self.edges[0].min(), self.edges[-1].max()])
+        place = pixel, -0.5 * nx * pixel, -0.5 * ny * pixel, turn, self.edges, limits
+        rest = self.held, self.coefficients, self.terms, self.fronts, self.corners
+        most = float(self.held[-1].max())
+        in_blocks(lambda a, b: integrate_sides(a, b, sides, *place, *rest), ny + 1, least=FEWEST_ROWS)
+        in_blocks(
+            lambda a, b: gather_light(a, b, image, sides, *place, most, self.fronts), ny, least=FEWEST_ROWS
         )
 
 

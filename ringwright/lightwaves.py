@@ -13,7 +13,7 @@ import itertools
 import math
 from concurrent.futures import ThreadPoolExecutor
 from dataclasses import replace
-from functools import cache
+from functools import cache, partial
 from typing import NamedTuple
 
 import numpy as np
@@ -183,12 +183,14 @@ def _in_closed_form(
                 middle, half = 0.5 * (part.low + part.high), 0.5 * (part.high - part.low)
                 rows = np.ascontiguousarray(_times_distance(part.coefficients, middle, half).T)
                 added = np.zeros((2, some.size))
-                with threads.LOCK:
-                    add_panel(
-                        *added, wavenumber[some], turn[some], middle, half, rows, part.angle, part.weight
-                    )
+                panel_of = (wavenumber[some], turn[some], middle, half, rows, part.angle, part.weight)
+                threads.in_blocks(partial(_add, added, panel_of), some.size, least=1)
                 found[:, some] += added
     return found[0] + 1j * found[1]
+
+
+def _add(added: Array, panel: tuple[Array, ...], first: int, last: int) -> None:
+    add_panel(first, last, *added, *panel)
 
 
 def _blocks(ascending: Array) -> list[slice]:

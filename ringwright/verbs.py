@@ -67,7 +67,9 @@ def profile(options: argparse.Namespace) -> int:
         emitting_radius=options.emitting_radius,
         accuracy=options.accuracy,
     )
+    earlier = _earlier(target, found.provenance)
     written = [found.save(target, replace=options.replace), *draw_profile(found, target.with_suffix(""))]
+    _print_all("replaced", earlier)
     if options.json:
         print_json({**found.summary(), "files": [str(path) for path in written]})
         return DONE

@@ -60,13 +60,11 @@ def _writable_base() -> Path:
     return temporary
 
 
-def kernel(*, parallel: bool = False, inline: bool = False) -> Callable[[Callable[..., Any]], Any]:
+def kernel(*, inline: bool = False) -> Callable[[Callable[..., Any]], Any]:
     """Compile a function with the project's one set of numba options.
 
     Parameters
     ----------
-    parallel : bool
-        Spread `numba.prange` loops over the cores that numba was given.
     inline : bool
         Oblige LLVM to inline the function into its callers, which lets their loops vectorise. Copying it in numba's own
         representation does so too, but types every copy anew: six per cent faster to run, 1.5 s longer to compile.
@@ -80,7 +78,6 @@ def kernel(*, parallel: bool = False, inline: bool = False) -> Callable[[Callabl
             return numba.njit(
                 function,
                 cache=True,
-                parallel=parallel,
                 nogil=True,
                 error_model="numpy",
                 fastmath=FAST_MATH,

@@ -7,7 +7,6 @@ radially are left to the per-ray code. G = c = M = 1.
 
 import math
 
-import numba
 import numpy as np
 
 from raytrace.kernels.compiling import kernel
@@ -231,15 +230,15 @@ def _trace_tile(alpha, beta, cosine, sine, radius, status, fate):
         n = _keep_crossed(x, y, place, found[:n], radius[order], status[order])
 
 
-@kernel(parallel=True)
-def crossing_radii(alpha, beta, cosine, sine, radius, status, fate):
-    """Fill status (orders, n), fate (n,) and, where rays cross, radius (orders, n), as `schwarzschild.trace_rays` does.
+@kernel()
+def crossing_radii(first, last, alpha, beta, cosine, sine, radius, status, fate):
+    """Fill status (orders, n), fate (n,) and, where rays cross, radius (orders, n) from one ray up to another, as
+    `schwarzschild.trace_rays` does.
 
     Rays that it cannot take get the fate LEFT and nothing else; the cosine of the inclination may not be 0.
     """
-    count = alpha.shape[0]
-    for tile in numba.prange((count + TILE - 1) // TILE):
-        start, stop = tile * TILE, min((tile + 1) * TILE, count)
+    for start in range(first, last, TILE):
+        stop = min(start + TILE, last)
         _trace_tile(
             alpha[start:stop],
             beta[start:stop],

@@ -7,7 +7,6 @@ a difference of large terms is needed. ℘ comes from Jacobi's functions (Bulirs
 
 import math
 
-import numba
 import numpy as np
 
 from raytrace.kernels.compiling import kernel
@@ -282,12 +281,13 @@ def trace_ray(i, alpha, beta, cosine, sine, radius, azimuth, delay, momentum, st
             momentum[2, order, i] = -alpha[i] * sine
 
 
-@kernel(parallel=True)
-def trace_rays(alpha, beta, cosine, sine, radius, azimuth, delay, momentum, status, fate):
-    """Trace every ray to its crossings.
+@kernel()
+def trace_rays(first, last, alpha, beta, cosine, sine, radius, azimuth, delay, momentum, status, fate):
+    """Trace rays from one up to another to their crossings.
 
     Parameters
     ----------
+    first, last : int
     alpha, beta : float64 arrays (n,)
     cosine, sine : float
         Of the inclination; the cosine is exactly 0 edge-on.
@@ -298,8 +298,6 @@ def trace_rays(alpha, beta, cosine, sine, radius, azimuth, delay, momentum, stat
     status : int8 array (orders, n)
     fate : int8 array (n,)
     """
-    count = radius.shape[1]
-    for tile in numba.prange((count + TILE - 1) // TILE):
-        work = np.empty(2 * MOST_RUNGS + 8)
-        for i in range(tile * TILE, min((tile + 1) * TILE, count)):
-            trace_ray(i, alpha, beta, cosine, sine, radius, azimuth, delay, momentum, status, fate, work)
+    work = np.empty(2 * MOST_RUNGS + 8)
+    for i in range(first, last):
+        trace_ray(i, alpha, beta, cosine, sine, radius, azimuth, delay, momentum, status, fate, work)

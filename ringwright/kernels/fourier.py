@@ -7,7 +7,6 @@ Bessel recurrence per angle. Lengths in M, wavenumbers in radians per M.
 
 import math
 
-import numba
 import numpy as np
 
 from raytrace.kernels.compiling import kernel
@@ -91,12 +90,13 @@ def bessel_sums(omega, row, count):
     return _downward(omega, row, count)
 
 
-@kernel(parallel=True)
-def add_panel(real, imaginary, wavenumber, turn, middle, half, coefficients, angle, weight):
-    """Add ∬ I e^{−iκ b sin(φ + turn)} b db dφ over one panel to every baseline.
+@kernel()
+def add_panel(first, last, real, imaginary, wavenumber, turn, middle, half, coefficients, angle, weight):
+    """Add ∬ I e^{−iκ b sin(φ + turn)} b db dφ over one panel to the baselines from one up to another.
 
     Parameters
     ----------
+    first, last : int
     real, imaginary : arrays (n,)
         Added to in place.
     wavenumber, turn : arrays (n,)
@@ -113,7 +113,7 @@ def add_panel(real, imaginary, wavenumber, turn, middle, half, coefficients, ang
     sines = np.sin(angle)
     cosines = np.cos(angle)
     spread = 2.0 * weight * half
-    for i in numba.prange(wavenumber.size):
+    for i in range(first, last):
         across, up = wavenumber[i] * math.cos(turn[i]), wavenumber[i] * math.sin(turn[i])
         sum_real = 0.0
         sum_imaginary = 0.0

@@ -10,7 +10,6 @@ that unit times M².
 
 import math
 
-import numba
 import numpy as np
 
 from raytrace.kernels.compiling import kernel
@@ -30,8 +29,8 @@ POINTS_2, WEIGHTS_2 = np.polynomial.legendre.leggauss(2)
 POINTS_4, WEIGHTS_4 = np.polynomial.legendre.leggauss(4)
 POINTS_10, WEIGHTS_10 = np.polynomial.legendre.leggauss(10)
 # A piece of a segment across less than this share of a panel gets two points, across less than that four, else ten:
-# panels hold light that falls by less than a factor of ten.
-SHORT, MEDIUM = 0.06, 0.5
+# panels hold light that falls by less than a factor of ten, so that a pixel's light is right to 1e-5.
+SHORT, MEDIUM = 0.15, 1.0
 # A grid line this close to the origin, in pixels, runs through it: no angle is swept along it.
 THROUGH_ORIGIN = 1e-9
 # Where a piece is asked on which side of every edge it lies, as a share of it away from its ends.
@@ -218,16 +217,31 @@ def _all_dark(x, y, half, turn, edges, fronts, weights):
     return is_dark(code, edges.shape[0] - 1, fronts.shape[0])
 
 
-@kernel(parallel=True)
-def gather_light(
-    image, pixel, first_x, first_y, turn, edges, limits, held, coefficients, terms, fronts, corners
+@kernel()
+def integrate_sides(
+    first,
+    last,
+    sides,
+    pixel,
+    first_x,
+    first_y,
+    turn,
+    edges,
+    limits,
+    held,
+    coefficients,
+    terms,
+    fronts,
+    corners,
 ):
-    """Add the light of one band to an image.
+    """Integrals of F along the sides of all pixels that begin on some grid lines.
 
     Parameters
     ----------
-    image : float64 array (ny, nx)
-        Added to in place; row 0 south, column 0 east.
+    first, last : int
+        From one grid line up to another.
+    sides : float64 array (2, ny + 1, nx + 1)
+        Filled: along x and along y, each toward growing x or y.
     pixel, first_x, first_y : float
         Side of a pixel; x where the first column begins (its east side), y where the first row begins [M].
     turn : float
@@ -247,15 +261,10 @@ def gather_light(
     corners : array (c,)
         Screen angles, ascending, at which edges cross each other [rad].
     """
-    rows, columns = image.shape
-    half = 0.5 * pixel
-    most = np.max(held[-1])
-    # Sides of all the pixels: those that run along x, and those that run along y.
-    sides = np.zeros((2, rows + 1, columns + 1))
-    for row in numba.prange(rows + 1):
-        weights = np.empty(4)
+    weights = np.empty(4)
+    for row in range(first, last):
         y = first_y + row * pixel
-        for column in range(columns + 1):
+        for column in range(sides.shape[2]):
             x = first_x + column * pixel
             for along in range(2):
                 low = y if along else x
@@ -274,10 +283,30 @@ def gather_light(
                     corners,
                     weights,
                 )
-    for row in numba.prange(rows):
-        weights = np.empty(4)
+
+
+@kernel()
+def gather_light(first, last, image, sides, pixel, first_x, first_y, turn, edges, limits, most, fronts):
+    """Add the light that the sides of every pixel enclose, from one row of an image up to another.
+
+    Parameters
+    ----------
+    first, last : int
+        Rows.
+    image : float64 array (ny, nx)
+        Added to in place; row 0 south, column 0 east.
+    sides : array (2, ny + 1, nx + 1)
+        From `integrate_sides`.
+    most : float
+        Greatest light per radian.
+    pixel, first_x, first_y, turn, edges, limits, fronts
+        As there.
+    """
+    weights = np.empty(4)
+    half = 0.5 * pixel
+    for row in range(first, last):
         y = first_y + (row + 0.5) * pixel
-        for column in range(columns):
+        for column in range(image.shape[1]):
             x = first_x + (column + 0.5) * pixel
             nearest = math.hypot(max(abs(x) - half, 0.0), max(abs(y) - half, 0.0))
             if nearest >= limits[1] or math.hypot(abs(x) + half, abs(y) + half) <= limits[0]:

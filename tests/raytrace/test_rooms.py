@@ -9,7 +9,7 @@ import pytest
 
 ROOT = Path(__file__).parent.parent.parent
 KERNELS = [path for folder in ("raytrace", "ringwright") for path in (ROOT / folder / "kernels").glob("*.py")]
-# The decorator and the lock are no kernels: they manage the compiler and the threads.
+# The decorator and the threads are no kernels: they manage what compiles and what runs them.
 NO_KERNELS = {"compiling.py", "threads.py"}
 
 

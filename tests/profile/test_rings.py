@@ -334,3 +334,26 @@ def test_light_from_infinity_has_no_table(write_scene):
     scene = rw.load_scene(write_scene(emitters='[[emitter]]\nkind = "backdrop"\n', orders=1))
     with pytest.raises(InputError, match="has no profile of its own"):
         table(scene)
+
+
+def test_light_from_the_photon_orbit_itself_is_resolved_in_every_order(scene_of):
+    # A narrow ring of gas on the photon orbit: its images crowd upon the critical curve; radii at r = 3, CHK.
+    ring = RING.replace("6 M", "3 M").format(width=0.02)
+    found = table(scene_of(text=ring, orders=4))
+    for order, radius in enumerate((3.88426557, 5.18991324, 5.19614030, 5.19615240)):
+        assert found.mean[order] == pytest.approx(radius, abs=0.02 * math.exp(-math.pi * order))
+        assert np.all(found.width[order] > 0.0)
+    assert np.all(found.flux > 0.0)
+
+
+def test_a_disk_whose_direct_image_lies_within_the_band_of_order_1_keeps_both_apart(scene_of):
+    # Face-on, r = 4.2 to 5 appears directly at 5.11 to 5.92 M, within what order 1 can reach, 5.015 to 6.168 M (CHK).
+    scene = scene_of(inner=4.2, outer=5.0, flow="static")
+    light = sample_light(scene, accuracy=1e-7)
+    found = ring_table(scene, light, count=8)
+    assert np.all((found.peak[0] > 5.015) & (found.peak[0] < 6.168))
+    cut = radial_cut(light, angle=0.2, orders=3)
+    both = (cut.intensity[0] > 0.0) & (cut.intensity[1] > 0.0)
+    assert both.any()
+    assert cut.total[both] == pytest.approx((cut.intensity[0] + cut.intensity[1] + cut.intensity[2])[both])
+    assert found.flux == pytest.approx([part.series.flux() for part in light], rel=1e-12)

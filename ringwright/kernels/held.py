@@ -64,28 +64,36 @@ def within_panel(coefficients, terms, first, weights, x):
 
 
 @kernel()
-def up_to(b, edges, held, coefficients, terms, first, weights):
-    """F(b) at an angle, nothing hidden."""
-    low = at_angle(edges[0], first, weights)
-    if b <= low:
+def up_to(b, beyond, edges, held, coefficients, terms, first, weights):
+    """F(b) at an angle, nothing hidden, for a distance beyond so many panel edges."""
+    if beyond == 0:
         return 0.0
-    panels = edges.shape[0] - 1
-    for k in range(panels):
-        high = at_angle(edges[k + 1], first, weights)
-        if b <= high:
-            x = (2.0 * b - low - high) / (high - low)
-            return at_angle(held[k], first, weights) + within_panel(
-                coefficients[k], terms[k], first, weights, x
-            )
-        low = high
-    return at_angle(held[panels], first, weights)
+    k = beyond - 1
+    inside = at_angle(held[k], first, weights)
+    if beyond == edges.shape[0]:
+        return inside
+    low = at_angle(edges[k], first, weights)
+    high = at_angle(edges[beyond], first, weights)
+    x = (2.0 * b - low - high) / (high - low)
+    return inside + within_panel(coefficients[k], terms[k], first, weights, x)
 
 
 @kernel()
-def seen_up_to(b, edges, held, coefficients, terms, fronts, first, weights):
+def edges_below(b, guess, edges, first, weights):
+    """Beyond how many panel edges a distance lies at an angle, searched from a guess."""
+    beyond = guess
+    while beyond > 0 and b <= at_angle(edges[beyond - 1], first, weights):
+        beyond -= 1
+    while beyond < edges.shape[0] and b > at_angle(edges[beyond], first, weights):
+        beyond += 1
+    return beyond
+
+
+@kernel()
+def seen_up_to(b, beyond, edges, held, coefficients, terms, fronts, first, weights):
     """F(b) at an angle without what lies behind opaque crossings, whose extents may overlap."""
     if fronts.shape[0] == 0:
-        return up_to(b, edges, held, coefficients, terms, first, weights)
+        return up_to(b, beyond, edges, held, coefficients, terms, first, weights)
     total = 0.0
     t = at_angle(edges[0], first, weights)
     while t < b:
@@ -104,30 +112,27 @@ def seen_up_to(b, edges, held, coefficients, terms, fronts, first, weights):
             inner = at_angle(fronts[i, 0], first, weights)
             if t < inner < end:
                 end = inner
-        total += up_to(end, edges, held, coefficients, terms, first, weights)
-        total -= up_to(t, edges, held, coefficients, terms, first, weights)
+        for side in range(2):
+            at = end if side == 1 else t
+            sign = 1.0 if side == 1 else -1.0
+            below = edges_below(at, beyond, edges, first, weights)
+            total += sign * up_to(at, below, edges, held, coefficients, terms, first, weights)
         t = end
     return total
 
 
 @kernel()
-def position(phi, b, turn, edges, fronts, weights):
-    """Where a point lies: beyond how many panel edges, and beyond which edges of what is in front, as one number;
-    and how many panels out from the band's inner edge, as a fraction.
+def position(phi, b, guess, turn, edges, fronts, weights):
+    """Where a point lies: beyond how many panel edges, searched from a guess, and beyond which edges of what is in
+    front, as one number; and how many panels out from the band's inner edge, as a fraction.
     """
     first = angle_weights(phi - turn, edges.shape[1] - PADDING, weights)
-    code = 0
-    place = 0.0
-    low = 0.0
-    for k in range(edges.shape[0]):
-        high = at_angle(edges[k], first, weights)
-        if b <= high:
-            if k > 0:
-                place += (b - low) / (high - low) - 1.0
-            break
-        code += 1
-        place = code
-        low = high
+    code = edges_below(b, guess, edges, first, weights)
+    place = float(code)
+    if 0 < code < edges.shape[0]:
+        low = at_angle(edges[code - 1], first, weights)
+        high = at_angle(edges[code], first, weights)
+        place += (b - low) / (high - low) - 1.0
     for i in range(fronts.shape[0]):
         for side in range(2):
             code = 2 * code + (1 if b > at_angle(fronts[i, side], first, weights) else 0)

@@ -102,7 +102,8 @@ def _piece(
     """∫ F dφ along a piece of a grid line that crosses no edge, but a share of a panel. Where something opaque cuts
     the band, its edge may cross all of it within a small angle: as many points as there are.
     """
-    if code >> (2 * fronts.shape[0]) == 0:
+    beyond = code >> (2 * fronts.shape[0])
+    if beyond == 0:
         return 0.0
     middle, half = 0.5 * (start + stop), 0.5 * (stop - start)
     count = 2 if share < SHORT else (4 if share < MEDIUM else 10)
@@ -119,7 +120,7 @@ def _piece(
         phi = middle + half * point
         first = angle_weights(phi - turn, edges.shape[1] - PADDING, weights)
         b = _distance(phi, line, horizontal)
-        total += weight * seen_up_to(b, edges, held, coefficients, terms, fronts, first, weights)
+        total += weight * seen_up_to(b, beyond, edges, held, coefficients, terms, fronts, first, weights)
     return total * half
 
 
@@ -128,11 +129,13 @@ def _stretch(start, stop, line, horizontal, turn, edges, held, coefficients, ter
     """∫ F dφ along a short stretch of a grid line, cut where it crosses an edge."""
     total = 0.0
     at = stop - INSET * (stop - start)
-    there, place = position(at, _distance(at, line, horizontal), turn, edges, fronts, weights)
+    guess = edges.shape[0] // 2
+    there, place = position(at, _distance(at, line, horizontal), guess, turn, edges, fronts, weights)
     for _ in range(MOST_CUTS):
         inset = INSET * (stop - start)
         at = start + inset
-        here, from_place = position(at, _distance(at, line, horizontal), turn, edges, fronts, weights)
+        guess = there >> (2 * fronts.shape[0])
+        here, from_place = position(at, _distance(at, line, horizontal), guess, turn, edges, fronts, weights)
         end, share = stop, abs(place - from_place)
         if here != there:
             end = _first_crossing(
@@ -210,7 +213,7 @@ def _all_dark(x, y, half, turn, edges, fronts, weights):
     for i in range(4):
         cx = x + (half if i % 2 else -half)
         cy = y + (half if i // 2 else -half)
-        here, _ = position(math.atan2(cy, cx), math.hypot(cx, cy), turn, edges, fronts, weights)
+        here, _ = position(math.atan2(cy, cx), math.hypot(cx, cy), 0, turn, edges, fronts, weights)
         if code >= 0 and here != code:
             return False
         code = here

@@ -24,7 +24,8 @@ Complex = NDArray[np.complex128]
 PER_FRINGE = 16
 # The error is asked for at every so many baselines.
 ERROR_EVERY = 48
-# An order carries the envelope where it has more than this share of it, over at least so many fringes.
+# An order carries the envelope where it has more than this share of it; being ahead for the last so many fringes of the
+# baselines sampled says nothing.
 CARRIES = 0.5
 LASTING = 2.0
 # Null: a minimum of the amplitude below this share of the envelope.
@@ -144,7 +145,8 @@ def _envelope(amplitude: Array, width: int) -> Array:
 
 
 def first_carried(found: Fringes, order: int, view: View, *, above: float = 0.0) -> Array:
-    """First baseline from which an order has more than half of the envelope, per direction [wavelengths].
+    """Baseline beyond which an order has more than half of the envelope until a higher one has more than it, per
+    direction [wavelengths].
 
     Parameters
     ----------
@@ -157,16 +159,19 @@ def first_carried(found: Fringes, order: int, view: View, *, above: float = 0.0)
     Returns
     -------
     array (p,)
-        NaN where it does not within the baselines sampled.
+        NaN where there is none within the baselines sampled, some fringes at their end aside.
     """
-    ahead = found.envelope[order] > CARRIES * found.total_envelope
+    mine = found.envelope[order]
+    ahead = mine > CARRIES * found.total_envelope
+    overtaken = np.any(found.envelope[order + 1 :] >= mine, axis=0)
     lasting = max(1, math.ceil(LASTING * view.fringe / (found.baseline[1] - found.baseline[0])))
     first = np.full(found.position_angle.size, np.nan)
     for row in range(first.size):
-        kept = np.convolve(ahead[row], np.ones(lasting), mode="full")[lasting - 1 :] > lasting - 0.5
-        where = np.flatnonzero(kept & (found.envelope[order, row] > above))
+        behind = np.flatnonzero(~(ahead[row] | overtaken[row]))
+        start = behind[-1] + 1 if behind.size else 0
+        where = np.flatnonzero(ahead[row, start:-lasting] & (mine[row, start:-lasting] > above))
         if where.size:
-            first[row] = found.baseline[where[0]]
+            first[row] = found.baseline[start + where[0]]
     return first
 
 

@@ -1,8 +1,9 @@
 """Who carries the visibility, from which baseline on, and what array would see the first photon ring.
 
-An order carries the envelope where it has more than half of it. A baseline in wavelengths becomes a length at the
-scene's frequency, and is set beside the Earth's diameter (IAU 2015 nominal equatorial radius, resolution B3).
-Statements here hold for the emission of the scene: another frequency may show another source.
+An order carries the envelope from the baseline beyond which it has more than half of it until a higher one takes over.
+A baseline in wavelengths becomes a length at the scene's frequency, and is set beside the Earth's diameter (IAU 2015
+nominal equatorial radius, resolution B3). Statements here hold for the emission of the scene: another frequency may
+show another source.
 """
 
 from __future__ import annotations
@@ -31,7 +32,7 @@ class Carrier:
     ----------
     order : int
     baseline : array (p,)
-        First baseline from which the order has more than half of the envelope [wavelengths]; NaN where never.
+        Beyond which the order has more than half of the envelope [wavelengths]; NaN where never.
     flux : array (p,)
         Envelope of the order there, in the scene's unit.
     reason : str

@@ -161,6 +161,16 @@ def test_a_moment_ahead_is_not_carrying():
     assert math.isnan(first_carried(made_up(np.ones_like(length), blip), 1, VIEW)[0])
 
 
+def test_an_order_that_falls_behind_again_carries_only_from_then_on():
+    length = np.linspace(0.0, 1e12, 4001)
+    zero = np.where((length > 2e11) & (length < 3e11), 1e-3, np.where(length < 5e11, 1.0, 1e-4))
+    one, two = np.full_like(length, 0.1), np.where(length > 8e11, 1.0, 1e-5)
+    found = made_up(zero, one, two)
+    assert first_carried(found, 1, VIEW)[0] == pytest.approx(5e11, abs=1e9)
+    # What a higher order takes over afterwards does not count against it.
+    assert first_carried(found, 2, VIEW)[0] == pytest.approx(8e11, abs=1e9)
+
+
 def test_baselines_beyond_the_accuracy_are_known():
     length = np.linspace(0.0, 1e12, 4001)
     found = made_up(np.exp(-length / 1e11), error=1e-4)

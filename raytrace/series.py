@@ -8,7 +8,7 @@ traces no ray. G = c = M = 1; angles in radians.
 from __future__ import annotations
 
 from dataclasses import dataclass, replace
-from functools import cache
+from functools import cache, cached_property
 from typing import Any
 
 import numpy as np
@@ -53,7 +53,7 @@ class BandSeries:
         transform = legendre_transform(len(sampled.nodes))
         return cls(sampled, np.einsum("mq,pqj->pmj", transform, values))
 
-    @property
+    @cached_property
     def values(self) -> Array:
         """The quantity at the band's samples, shape (panels, q, n_angles)."""
         rows = legendre.legvander(self.band.nodes, self.coefficients.shape[1] - 1)

@@ -92,12 +92,7 @@ def _add_render(verbs: argparse._SubParsersAction[argparse.ArgumentParser]) -> N
         "--maps", action="store_true", help="also store crossing radius, redshift factor and delay"
     )
     parser.add_argument("--fits", action="store_true", help="also write a FITS image with a celestial WCS")
-    parser.add_argument(
-        "--accuracy",
-        type=float,
-        default=1e-5,
-        help="interpolation error of brightness allowed (default: 1e-5)",
-    )
+    _add_accuracy(parser, "1e-5")
     _add_common(parser, "outputs/<scene name>.h5")
 
 
@@ -128,12 +123,7 @@ def _add_profile(verbs: argparse._SubParsersAction[argparse.ArgumentParser]) -> 
         metavar="RADIUS",
         help='circle whose images tell rotation and delay, such as "6 M" (default: the one that holds half of order 0)',
     )
-    parser.add_argument(
-        "--accuracy",
-        type=float,
-        default=1e-7,
-        help="interpolation error of brightness allowed (default: 1e-7)",
-    )
+    _add_accuracy(parser, "1e-7")
     _add_common(parser, "outputs/<scene name>-profile.h5")
 
 
@@ -188,6 +178,15 @@ def _add_new(verbs: argparse._SubParsersAction[argparse.ArgumentParser]) -> None
     parser.add_argument("kind", choices=("scene", "scan", "observation"))
     parser.add_argument("file")
     parser.add_argument("--replace", action="store_true", help="replace the file if it exists")
+
+
+def _add_accuracy(parser: argparse.ArgumentParser, default: str) -> None:
+    parser.add_argument(
+        "--accuracy",
+        type=float,
+        default=default,
+        help=f"interpolation error of brightness allowed (default: {default})",
+    )
 
 
 def _add_common(

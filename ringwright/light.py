@@ -21,7 +21,7 @@ from raytrace.kernels.threads import in_blocks
 from raytrace.panels import Band, gauss_legendre
 from raytrace.series import equally_spaced
 from ringwright.kernels.pixels import gather_light, integrate_sides
-from ringwright.sampling import SampledLight, sample_light
+from ringwright.sampling import SampledLight, needed_terms, sample_light, seen_flux
 
 if TYPE_CHECKING:
     from ringwright.scenes import Scene
@@ -123,10 +123,10 @@ def lit_band(sampled: SampledLight, accuracy: float) -> LitBand:
         edges,
         _padded(held, angles),
         np.ascontiguousarray(np.moveaxis(_padded(within, angles), 1, 2)),
-        _needed_terms(series, NEGLIGIBLE * accuracy) + ADDED_TERMS,
+        needed_terms(series, NEGLIGIBLE * accuracy) + ADDED_TERMS,
         np.array([_padded(front, angles) for front in sampled.fronts]).reshape(-1, 2, edges.shape[1]),
         sampled.corners(),
-        _flux(sampled),
+        math.nan if sampled.boundless else seen_flux(sampled),
         sampled.error,
     )
 
@@ -144,27 +144,6 @@ def _within_panels(series: Array, band: Band) -> Array:
     product[:, :-2] += 0.5 * half * series[:, 1:]
     product[:, 1:2] += 0.5 * half * series[:, :1]
     return np.asarray(half * chebyshev.chebint(product, lbnd=-1, axis=1), dtype=np.float64)
-
-
-def _flux(sampled: SampledLight) -> float:
-    """All the light that is seen; not known for light that only the field ends."""
-    if sampled.boundless:
-        return math.nan
-    if not sampled.fronts:
-        return sampled.series.flux()
-    from ringwright.lightwaves import visibility
-
-    at_zero = np.zeros(1)
-    return float(visibility(sampled, wavenumber=at_zero, turn=at_zero)[0].real)
-
-
-def _needed_terms(series: Array, share: float) -> NDArray[np.int64]:
-    """How many terms each panel needs so that what is dropped is below a share of the largest term of all."""
-    size = np.max(np.abs(series), axis=2)
-    needed = size > share * float(np.max(size))
-    return np.where(needed.any(axis=1), size.shape[1] - np.argmax(needed[:, ::-1], axis=1), 1).astype(
-        np.int64
-    )
 
 
 def _padded(rows: Array, count: int) -> Array:

@@ -11,9 +11,9 @@ from __future__ import annotations
 
 import itertools
 import math
-from concurrent.futures import ThreadPoolExecutor
+from collections.abc import Sequence
 from dataclasses import replace
-from functools import cache, partial
+from functools import partial
 from typing import NamedTuple
 
 import numpy as np
@@ -26,8 +26,7 @@ from raytrace.panels import gauss_legendre
 from raytrace.series import BandSeries, equally_spaced, legendre_transform, trigonometric_weights
 from ringwright.errors import InputError
 from ringwright.kernels.fourier import add_panel
-from ringwright.machine import core_count
-from ringwright.sampling import SampledLight
+from ringwright.sampling import SampledLight, needed_terms
 
 Complex = NDArray[np.complex128]
 Panels = NDArray[np.int64]
@@ -93,27 +92,37 @@ def visibility(light: SampledLight, *, wavenumber: Array, turn: Array) -> Comple
             "light from infinity fills whatever field is drawn and has no visibility of its own; leave the backdrop out"
         )
     found = np.zeros(wavenumber.size, dtype=np.complex128)
-    alone = np.ones(light.series.coefficients.shape[:1] + wavenumber.shape, dtype=bool)
+    panels = light.series.coefficients.shape[0]
+    corners = [light.corners((panel, panel + 1)) for panel in range(panels)]
+    alone = np.ones((panels, *wavenumber.shape), dtype=bool)
     tasks = []
     for direction in np.unique(turn):
         same = np.flatnonzero(turn == direction)
         for panel in _worth_sampling(light, wavenumber[same]):
             tasks.append((same, panel, direction))
             alone[panel, same] = False
-    with ThreadPoolExecutor(core_count()) as pool:
-        # Numbers do not depend on how many threads there are: each task has one, and sums keep their order.
-        parts = pool.map(lambda task: _along(light, task[1], wavenumber[task[0]], task[2]), tasks)
-        for (same, _, _), part in zip(tasks, parts, strict=True):
-            found[same] += part
-    return found + _in_closed_form(light, alone, wavenumber, turn)
+    parts: list[Complex] = [found] * len(tasks)
+
+    def work(first: int, last: int) -> None:
+        for k in range(first, last):
+            same, panel, direction = tasks[k]
+            parts[k] = _along(light, panel, corners[panel], wavenumber[same], direction)
+
+    threads.in_blocks(work, len(tasks), least=1)
+    for (same, _, _), part in zip(tasks, parts, strict=True):
+        found[same] += part
+    return found + _in_closed_form(light, corners, alone, wavenumber, turn)
 
 
-def interpolation_error(light: SampledLight, *, wavenumber: Array, turn: Array) -> Array:
+def interpolation_error(
+    light: SampledLight, *, wavenumber: Array, turn: Array, whole: Complex | None = None
+) -> Array:
     """Estimated error of `visibility`: what the tails of the light's series contribute and may leave out, and
-    rounding; shape (n,).
+    rounding; shape (n,). `whole` is the visibility itself where it is known already.
     """
     without = replace(light, series=light.series.without_tails())
-    whole = visibility(light, wavenumber=wavenumber, turn=turn)
+    if whole is None:
+        whole = visibility(light, wavenumber=wavenumber, turn=turn)
     contributed = np.abs(whole - visibility(without, wavenumber=wavenumber, turn=turn))
     longest_first = np.argsort(-wavenumber, kind="stable")
     found = np.empty_like(contributed)
@@ -130,16 +139,16 @@ def _worth_sampling(light: SampledLight, wavenumber: Array) -> Panels:
     return np.flatnonzero(across < SAMPLES_PER_BASELINE * wavenumber.size)
 
 
-def _along(light: SampledLight, panel: int, wavenumber: Array, direction: float) -> Complex:
+def _along(light: SampledLight, panel: int, corners: Array, wavenumber: Array, direction: float) -> Complex:
     """What a panel contributes to baselines of one direction: its samples, projected on that direction."""
     import finufft
 
     longest = float(np.max(wavenumber))
     angles = _angles(longest * _reach(light.series)[panel], len(light.series.band.angles))
     found = np.zeros(wavenumber.size, dtype=np.complex128)
-    for part in _visible(light, panel, angles):
+    for part in _visible(light, panel, angles, corners):
         pieces = max(1, math.ceil(0.5 * longest * float(np.max(part.high - part.low)) / PIECE_PHASE))
-        x, weights = _pieces(pieces)
+        x, weights = _composite(PIECE_NODES, pieces, -1.0, 1.0)
         rows = legendre.legvander(x, part.coefficients.shape[0] - 1)
         chunk = max(1, SAMPLES_AT_A_TIME // x.size)
         for start in range(0, part.low.size, chunk):
@@ -159,16 +168,20 @@ def _along(light: SampledLight, panel: int, wavenumber: Array, direction: float)
     return found
 
 
-@cache
-def _pieces(count: int) -> tuple[Array, Array]:
-    """A composite Gauss–Legendre rule on (−1, 1)."""
-    points, weights = gauss_legendre(PIECE_NODES)
-    middles = (2.0 * np.arange(count) + 1.0) / count - 1.0
-    return (middles[:, None] + points / count).ravel(), np.tile(weights / count, count)
+def _composite(nodes: int, pieces: int, start: float, stop: float) -> tuple[Array, Array]:
+    """Points and weights of Gauss–Legendre rules on equal pieces of an interval."""
+    points, weights = gauss_legendre(nodes)
+    half = 0.5 * (stop - start) / pieces
+    middles = start + half * (2.0 * np.arange(pieces) + 1.0)
+    return (middles[:, None] + half * points).ravel(), np.tile(half * weights, pieces)
 
 
 def _in_closed_form(
-    light: SampledLight, chosen: NDArray[np.bool_], wavenumber: Array, turn: Array
+    light: SampledLight,
+    corners: Sequence[Array],
+    chosen: NDArray[np.bool_],
+    wavenumber: Array,
+    turn: Array,
 ) -> Complex:
     """What each panel contributes to the baselines chosen for it (panels, n), one by one."""
     found = np.zeros((2, wavenumber.size))
@@ -179,7 +192,7 @@ def _in_closed_form(
         for block in _blocks(wavenumber[index]):
             some = index[block]
             angles = _angles(float(wavenumber[some[-1]]) * reach[panel], len(light.series.band.angles))
-            for part in _visible(light, panel, angles):
+            for part in _visible(light, panel, angles, corners[panel]):
                 middle, half = 0.5 * (part.low + part.high), 0.5 * (part.high - part.low)
                 rows = np.ascontiguousarray(_times_distance(part.coefficients, middle, half).T)
                 added = np.zeros((2, some.size))
@@ -233,14 +246,15 @@ def _times_distance(coefficients: Array, middle: Array, half: Array) -> Array:
     return product * signs[:, None]
 
 
-def _visible(light: SampledLight, panel: int, angles: int) -> list[Part]:
-    """The parts of a panel that nothing opaque hides, at so many angles or, cut by something in front, more."""
-    crossings = light.corners((panel, panel + 1))
-    if not crossings.size:
+def _visible(light: SampledLight, panel: int, angles: int, corners: Array) -> list[Part]:
+    """The parts of a panel that nothing opaque hides, at so many angles or, cut by something in front at some corners,
+    more.
+    """
+    if not corners.size:
         angle = math.tau / angles * np.arange(angles, dtype=np.float64)
         weight = np.full(angles, math.tau / angles)
         return _left_open(light, _whole(light, panel, angle, weight))
-    ends = np.append(crossings, crossings[0] + math.tau)
+    ends = np.append(corners, corners[0] + math.tau)
     arcs = [_arc(start, stop, angles) for start, stop in itertools.pairwise(ends)]
     return [part for arc in arcs for part in _left_open(light, _whole(light, panel, *arc))]
 
@@ -248,20 +262,11 @@ def _visible(light: SampledLight, panel: int, angles: int) -> list[Part]:
 def _whole(light: SampledLight, panel: int, angle: Array, weight: Array) -> Part:
     """A whole panel at some angles."""
     series = light.series
-    terms = _terms(light, panel)
+    terms = needed_terms(series.coefficients, NEGLIGIBLE * light.error)[panel]
     rows = np.concatenate([series.band.offsets[panel : panel + 2], series.coefficients[panel, :terms]])
     found = _at(rows, angle)
     low, high = series.band.curve(angle) + found[:2]
     return Part(low, high, found[2:], angle, weight)
-
-
-def _terms(light: SampledLight, panel: int) -> int:
-    """Legendre terms of a panel that matter."""
-    coefficients = np.abs(light.series.coefficients)
-    needed = np.flatnonzero(
-        np.max(coefficients[panel], axis=1) > NEGLIGIBLE * light.error * np.max(coefficients)
-    )
-    return int(needed[-1]) + 1 if needed.size else 1
 
 
 def _at(rows: Array, angle: Array) -> Array:
@@ -275,14 +280,13 @@ def _at(rows: Array, angle: Array) -> Array:
 def _arc(start: float, stop: float, angles: int) -> tuple[Array, Array]:
     """Angles and weights of a composite Gauss–Legendre rule on an arc, as dense as so many angles a turn."""
     pieces = math.ceil((stop - start) * angles / (math.tau * ARC_PHASE))
-    points, weights = gauss_legendre(ARC_NODES)
-    half = 0.5 * (stop - start) / pieces
-    middles = start + half * (2.0 * np.arange(pieces) + 1.0)
-    return (middles[:, None] + half * points).ravel(), np.tile(half * weights, pieces)
+    return _composite(ARC_NODES, pieces, start, stop)
 
 
 def _left_open(light: SampledLight, whole: Part) -> list[Part]:
     """What opaque crossings in front leave of a panel; on each arc they lie to its edges in one way."""
+    if not light.fronts:
+        return [whole]
     parts = [(whole.low, whole.high)]
     for front in light.fronts:
         inner, outer = _at(front, whole.angle)
@@ -291,8 +295,6 @@ def _left_open(light: SampledLight, whole: Part) -> list[Part]:
             for low, high in parts
             for piece in ((low, np.clip(inner, low, high)), (np.clip(outer, low, high), high))
         ]
-    if not light.fronts:
-        return [whole]
     return [
         Part(low, high, _on_part(whole, low, high), whole.angle, whole.weight)
         for low, high in parts

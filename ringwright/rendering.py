@@ -20,7 +20,7 @@ from ringwright import products
 from ringwright.errors import InputError
 from ringwright.image import Image
 from ringwright.light import LitBand, light_up
-from ringwright.sampling import accuracy_note, check_accuracy
+from ringwright.sampling import accuracy_note, check_accuracy, flux_scale
 from ringwright.scenes import Scene, load_scene
 
 # Interpolation error allowed, relative to the brightest point of each order.
@@ -69,7 +69,7 @@ def render(scene: Scene | str | Path, *, maps: bool = False, accuracy: float = A
         lit.add_to(stack[lit.order], scene.field_m / scene.pixels, scene.position_angle)
         flux[lit.order] += lit.flux if math.isfinite(lit.flux) else float(stack[lit.order].sum()) - before
     np.maximum(stack, 0.0, out=stack)
-    scale = _scale(scene, flux)
+    scale = flux_scale(scene, float(flux.sum()))
     stack *= scale
     in_field = stack.sum(axis=(1, 2))
     width = _widths(bands, scene.orders)
@@ -98,15 +98,6 @@ def _position(scene: Scene) -> tuple[float, float] | None:
         return None
     ra, dec = scene.position
     return float(ra.to_value("deg")), float(dec.to_value("deg"))
-
-
-def _scale(scene: Scene, flux: Array) -> float:
-    total = float(flux.sum())
-    if not total > 0.0:
-        raise InputError(
-            f"no light of '{scene.name}' reaches the observer: every emitter is dark; raise a strength or widen a disk"
-        )
-    return (1.0 if scene.total_flux is None else float(scene.total_flux.to_value("Jy"))) / total
 
 
 def _widths(bands: tuple[LitBand, ...], orders: int) -> Array:

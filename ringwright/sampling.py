@@ -15,6 +15,7 @@ from itertools import combinations, product
 from typing import TYPE_CHECKING
 
 import numpy as np
+from numpy.typing import NDArray
 
 import emission as em
 import raytrace as rt
@@ -122,6 +123,42 @@ def accuracy_note(errors: Iterable[float], accuracy: float) -> tuple[str, ...]:
     if worst <= SLACK * accuracy:
         return ()
     return (f"brightness is interpolated to {worst:.1g} of its maximum, not to the {accuracy:.1g} asked for",)
+
+
+def seen_flux(light: SampledLight) -> float:
+    """∫ I dα dβ of what nothing opaque hides [the brightness's unit times M²]."""
+    if not light.fronts:
+        return light.series.flux()
+    from ringwright.lightwaves import visibility  # which stands on this module, and few scenes need
+
+    at_zero = np.zeros(1)
+    return float(visibility(light, wavenumber=at_zero, turn=at_zero)[0].real)
+
+
+def flux_scale(scene: Scene, total: float) -> float:
+    """What takes light in the emitters' own unit to the scene's: Jy, or shares of the light.
+
+    Raises
+    ------
+    InputError
+        If there is no light at all.
+    """
+    if not total > 0.0:
+        raise InputError(
+            f"no light of '{scene.name}' reaches the observer: every emitter is dark; raise a strength or widen a disk"
+        )
+    return (1.0 if scene.total_flux is None else float(scene.total_flux.to_value("Jy"))) / total
+
+
+def needed_terms(series: Array, share: float) -> NDArray[np.int64]:
+    """How many terms each panel of a series (panels, m, n_angles) needs so that what is dropped is below a share of
+    the largest term of all.
+    """
+    size = np.max(np.abs(series), axis=2)
+    needed = size > share * float(np.max(size))
+    return np.where(needed.any(axis=1), size.shape[1] - np.argmax(needed[:, ::-1], axis=1), 1).astype(
+        np.int64
+    )
 
 
 def sample_light(scene: Scene, *, accuracy: float) -> tuple[SampledLight, ...]:

@@ -1,6 +1,6 @@
 """Kernels on several threads: ranges of independent work handed to a few Python threads, which kernels let run at once.
 
-numba's own parallel loops compile twice as long, need a threading layer that aborts when two threads enter it, and kill
+numba's own parallel loops take a third longer to compile, need a threading layer that aborts when two threads enter it, and kill
 the children of a fork; a kernel that is called with a range of rows needs none of that. How many threads: what numba was
 given (NUMBA_NUM_THREADS), by default all the cores.
 """

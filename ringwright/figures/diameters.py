@@ -6,6 +6,8 @@ in µas.
 
 from __future__ import annotations
 
+from collections.abc import Sequence
+
 import numpy as np
 from matplotlib.axes import Axes
 from matplotlib.figure import Figure
@@ -122,9 +124,7 @@ def _frame(axes: Axes, found: list[tuple[Array, Array]]) -> tuple[float, float]:
     low, high = axes.get_ylim()
     tail = 0.5 * (1.0 - SHOWN)
     for values, weight in found:
-        order = np.argsort(values)
-        running = np.cumsum(weight[order])
-        ends = np.interp(np.array([tail, 1.0 - tail]) * running[-1], running, values[order])
+        ends = _weighted(values, weight, [tail, 1.0 - tail])
         low, high = min(low, ends[0]), max(high, ends[1])
     return low, high
 
@@ -154,9 +154,12 @@ def quantiles(values: Array, weight: Array) -> Array:
     for column, each in enumerate(values.T):
         found = np.isfinite(each) & (weight > 0.0)
         if weight[found].sum() > FEW * weight.sum():
-            order = np.argsort(each[found])
-            running = np.cumsum(weight[found][order])
-            result[:, column] = np.interp(
-                np.array([0.16, 0.5, 0.84]) * running[-1], running, each[found][order]
-            )
+            result[:, column] = _weighted(each[found], weight[found], [0.16, 0.5, 0.84])
     return result
+
+
+def _weighted(values: Array, weight: Array, shares: Sequence[float]) -> Array:
+    """Values below which these shares of the weight lie."""
+    order = np.argsort(values)
+    running = np.cumsum(weight[order])
+    return np.interp(np.array(shares) * running[-1], running, values[order])

@@ -192,14 +192,11 @@ def _segment(
     foot = math.atan2(line, 0.0) if horizontal else math.atan2(0.0, line)
     start = foot + (-math.atan(low / line) if horizontal else math.atan(low / line))
     stop = foot + (-math.atan(high / line) if horizontal else math.atan(high / line))
+    turning = foot if low < 0.0 < high else start
     total = 0.0
+    # One call in a loop: a second one would be compiled a second time.
     for half in range(2):
-        a = start if half == 0 else foot
-        z = stop if half == 1 else foot
-        if low >= 0.0 or high <= 0.0:
-            if half == 1:
-                break
-            z = stop
+        a, z = (start, turning) if half == 0 else (turning, stop)
         total += _between(
             a, z, line, horizontal, turn, edges, held, coefficients, terms, fronts, corners, weights
         )

@@ -109,8 +109,9 @@ def fringes(
     some = np.union1d(np.arange(0, count, ERROR_EVERY), [count - 1])
     error = np.zeros((position_angle.size, some.size))
     for part in light:
-        found[part.order] += seen(part, view, baseline, position_angle)
-        error += _seen_error(part, view, baseline[some], position_angle)
+        values = seen(part, view, baseline, position_angle)
+        found[part.order] += values
+        error += _seen_error(part, view, baseline[some], position_angle, values[:, some])
     width = 2 * round(view.fringe / (baseline[1] - baseline[0])) + 1
     return Fringes(
         baseline,
@@ -129,9 +130,14 @@ def seen(part: SampledLight, view: View, baseline: Array, position_angle: Array)
     return values.reshape(position_angle.size, baseline.size)
 
 
-def _seen_error(part: SampledLight, view: View, baseline: Array, position_angle: Array) -> Array:
+def _seen_error(
+    part: SampledLight, view: View, baseline: Array, position_angle: Array, whole: Complex
+) -> Array:
+    """Error of what `seen` has given on the same baselines."""
     wavenumber, turn = _grid(view, baseline, position_angle)
-    values = view.scale * interpolation_error(part, wavenumber=wavenumber, turn=turn)
+    values = view.scale * interpolation_error(
+        part, wavenumber=wavenumber, turn=turn, whole=whole.ravel() / view.scale
+    )
     return values.reshape(position_angle.size, baseline.size)
 
 

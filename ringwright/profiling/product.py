@@ -23,7 +23,6 @@ if TYPE_CHECKING:
 
 KIND = "profile"
 GIGA = 1e9
-MICROARCSECOND = math.pi / 180.0 / 3600.0 * 1e-6
 # Fields of the table of rings and what they are; M and M² of flux aside.
 LENGTHS = {
     "band_inner": "where the innermost emitting circle appears",
@@ -138,7 +137,7 @@ def summary(profile: Profile) -> dict[str, Any]:
     rings, sight = profile.rings, profile.first_sight
     return {
         "name": profile.name,
-        "theta_g": None if profile.theta_g is None else _quantity(profile.theta_g / MICROARCSECOND, "uas"),
+        "theta_g": None if profile.theta_g is None else _quantity(profile.theta_g_uas, "uas"),
         "frequency": None if profile.frequency is None else _quantity(profile.frequency / 1e9, "GHz"),
         "total_flux": _quantity(profile.total_flux, profile.unit),
         "emitting_radius": _quantity(rings.emitting_radius, "M"),

@@ -18,13 +18,12 @@ import numpy as np
 from raytrace.contract import Array
 from ringwright import products
 from ringwright.errors import InputError
-from ringwright.lightwaves import visibility
 from ringwright.profiling.cuts import Cut, radial_cut
 from ringwright.profiling.fringes import Fringes, View, fringes, nulls, trusted_baseline
-from ringwright.profiling.rings import RingTable, ring_table
+from ringwright.profiling.rings import RingTable, order_fluxes, ring_table
 from ringwright.profiling.sight import Carrier, FirstSight, carriers, first_sight
 from ringwright.profiling.spacing import Spacing, ring_diameters
-from ringwright.sampling import SampledLight, accuracy_note, check_accuracy, sample_light
+from ringwright.sampling import SampledLight, accuracy_note, check_accuracy, flux_scale, sample_light
 from ringwright.scenes import Scene, load_scene
 from ringwright.units import parse
 
@@ -98,6 +97,11 @@ class Profile:
     notes: tuple[str, ...]
     provenance: dict[str, Any] = field(repr=False)
 
+    @property
+    def theta_g_uas(self) -> float:
+        """The same in µas; NaN where it is not known."""
+        return math.nan if self.theta_g is None else math.degrees(self.theta_g) * 3.6e9
+
     def save(self, path: str | Path | None = None, *, replace: bool = False) -> Path:
         """Write the HDF5 product; returns its path. `docs/products.md` describes it."""
         from ringwright.profiling.product import save
@@ -159,10 +163,10 @@ def profile(
     scene = _with_orders(scene, orders, angles, accuracy)
     directions = _directions(scene, position_angles)
     light = sample_light(scene, accuracy=accuracy)
-    flux = _fluxes(scene, light)
-    scale = (1.0 if scene.total_flux is None else float(scene.total_flux.to_value("Jy"))) / float(flux.sum())
+    flux = order_fluxes(light, scene.orders)
+    scale = flux_scale(scene, float(flux.sum()))
     radius = _emitting_radius(scene, emitting_radius)
-    rings = ring_table(scene, light, count=angles, emitting_radius=radius, scale=scale)
+    rings = ring_table(scene, light, count=angles, emitting_radius=radius, scale=scale, flux=flux)
     cut_angle = np.concatenate([directions, directions + math.pi])
     unit = "" if scene.total_flux is None else "Jy"
     notes = [*rings.notes, *accuracy_note((part.error for part in light), accuracy)]
@@ -254,19 +258,6 @@ def _screen_angle(scene: Scene, position_angle: float) -> float:
     return position_angle - scene.position_angle + 0.5 * math.pi
 
 
-def _fluxes(scene: Scene, light: Sequence[SampledLight]) -> Array:
-    """What is seen of each order, in the emitters' unit times M²."""
-    flux = np.zeros(scene.orders)
-    none = np.zeros(1)
-    for part in light:
-        flux[part.order] += visibility(part, wavenumber=none, turn=none)[0].real
-    if not flux.sum() > 0.0:
-        raise InputError(
-            f"no light of '{scene.name}' reaches the observer: every emitter is dark; raise a strength or widen a disk"
-        )
-    return flux
-
-
 def _view(scene: Scene, scale: float) -> View | None:
     if scene.theta_g is None:
         return None
@@ -295,7 +286,7 @@ def _seen(
         )
     found = fringes(light, view, orders=scene.orders, longest=longest, position_angle=directions)
     frequency = None if scene.frequency is None else float(scene.frequency.to_value("Hz"))
-    width = np.array([float(np.nanmedian(row)) if np.isfinite(row).any() else 0.0 for row in rings.width])
+    width = rings.typical_width
     fringed = [order for order in FRINGED if order < scene.orders and rings.flux[order] > 0.0]
     return {
         "fringes": found,

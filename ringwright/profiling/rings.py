@@ -20,9 +20,8 @@ import raytrace as rt
 from raytrace.contract import Array
 from raytrace.panels import gauss_legendre
 from raytrace.roots import bracketed_roots
-from ringwright.lightwaves import visibility
 from ringwright.profiling.cuts import POINTS, Lines, corners, middles
-from ringwright.sampling import SampledLight
+from ringwright.sampling import SampledLight, seen_flux
 from ringwright.scenes import Scene
 
 LIMIT_RATIO = math.exp(-math.pi)
@@ -86,9 +85,22 @@ class RingTable:
     notes: tuple[str, ...]
 
     @property
+    def typical_width(self) -> Array:
+        """Median width of every order [M]; NaN without light."""
+        return _medians(self.width)
+
+    @property
     def band_width(self) -> Array:
         """Width of the band that each order can reach [M]; infinite for order 0."""
         return self.band_outer - self.band_inner
+
+
+def order_fluxes(light: Sequence[SampledLight], orders: int) -> Array:
+    """What is seen of every order, at the light's own angles: those of a table may be too few for it."""
+    flux = np.zeros(orders)
+    for part in light:
+        flux[part.order] += seen_flux(part)
+    return flux
 
 
 def ring_table(
@@ -98,6 +110,7 @@ def ring_table(
     count: int,
     emitting_radius: float | None = None,
     scale: float = 1.0,
+    flux: Array | None = None,
 ) -> RingTable:
     """The table of a scene's rings.
 
@@ -112,6 +125,8 @@ def ring_table(
         [M]; the circle within which half of order 0's light is emitted unless given.
     scale : float
         Flux in the scene's unit per unit of ∫ I dα dβ.
+    flux : array (orders,), optional
+        What `order_fluxes` gives, where it is known already.
 
     Raises
     ------
@@ -129,7 +144,7 @@ def ring_table(
     inner = min(float(part.series.band.radii[0]) for part in light)
     radius = _half_light_radius(scene, by_order[0]) if emitting_radius is None else emitting_radius
     rotation, delay = _after_the_order_before(scene, radius, angle)
-    flux = scale * np.array([sum(_flux(part) for part in parts) for parts in by_order])
+    flux = scale * (order_fluxes(light, scene.orders) if flux is None else flux)
     return RingTable(
         position_angle=position_angle,
         band_inner=_images(scene, inner, angle),
@@ -143,21 +158,13 @@ def ring_table(
         angular_flux=scale * angular_flux,
         flux=flux,
         fraction=flux / flux.sum(),
-        width_ratio=_over_the_one_before(np.array([_spread(row)[0] for row in width])),
+        width_ratio=_over_the_one_before(_medians(width)),
         flux_ratio=_over_the_one_before(flux),
         rotation=rotation,
         delay=delay,
         emitting_radius=radius,
         notes=_notes(by_order, flux, angular_flux),
     )
-
-
-def _flux(part: SampledLight) -> float:
-    """∫ I dα dβ of what is seen, at the light's own angles: those of the table may be too few for it."""
-    if not part.fronts:
-        return part.series.flux()
-    none = np.zeros(1)
-    return float(visibility(part, wavenumber=none, turn=none)[0].real)
 
 
 class _Shape(NamedTuple):
@@ -178,12 +185,13 @@ def _shape(lines: Sequence[Lines]) -> _Shape:
     held = np.where(lit, held, np.nan)
     mean = np.sum(light * b, axis=(0, 1)) / held
     spread = np.sqrt(np.maximum(np.sum(light * (b - mean) ** 2, axis=(0, 1)) / held, 0.0))
-    peak, height = _crest(lines, marks)
+    sampled = _sampled(lines, marks)
+    peak, height = _crest(lines, sampled)
     return _Shape(
         peak=np.where(lit, peak, np.nan),
         mean=mean,
         width=spread,
-        fwhm=np.where(lit, _fwhm(lines, marks, 0.5 * height), np.nan),
+        fwhm=np.where(lit, _fwhm(lines, sampled, 0.5 * height), np.nan),
         angular_flux=np.where(lit, np.sum(light * b, axis=(0, 1)), 0.0),
     )
 
@@ -211,10 +219,10 @@ def _sampled(lines: Sequence[Lines], marks: Array) -> tuple[Array, Array, Array]
     return b.reshape(flat), np.repeat(middle, POINTS, axis=0), value.reshape(flat)
 
 
-def _crest(lines: Sequence[Lines], marks: Array) -> tuple[Array, Array]:
+def _crest(lines: Sequence[Lines], sampled: tuple[Array, Array, Array]) -> tuple[Array, Array]:
     """Place and height of the brightest point: the best sample, then ever closer around it within its piece."""
-    b, middle, value = _sampled(lines, marks)
-    each = np.arange(marks.shape[1])
+    b, middle, value = sampled
+    each = np.arange(value.shape[1])
     at = np.argmax(value, axis=0)
     best, height, inside = b[at, each], value[at, each], middle[at, each]
     low = b[np.where(at % POINTS > 0, at - 1, at), each]
@@ -229,10 +237,10 @@ def _crest(lines: Sequence[Lines], marks: Array) -> tuple[Array, Array]:
     return best, height
 
 
-def _fwhm(lines: Sequence[Lines], marks: Array, half: Array) -> Array:
+def _fwhm(lines: Sequence[Lines], sampled: tuple[Array, Array, Array], half: Array) -> Array:
     """Between the outermost points at which brightness crosses half its maximum; a jump through it is such a point."""
-    b, middle, value = _sampled(lines, marks)
-    above, each, last = value >= half, np.arange(marks.shape[1]), len(value) - 1
+    b, middle, value = sampled
+    above, each, last = value >= half, np.arange(half.size), len(value) - 1
     inner, outer = np.argmax(above, axis=0), last - np.argmax(above[::-1], axis=0)
     ends = []
     for at, step in ((inner, -1), (outer, 1)):
@@ -313,6 +321,10 @@ def _spread(row: Array) -> list[float]:
     """Median, least and greatest of what is known; NaN where nothing is."""
     known = row[np.isfinite(row)]
     return [float(pick(known)) for pick in (np.median, np.min, np.max)] if known.size else [math.nan] * 3
+
+
+def _medians(rows: Array) -> Array:
+    return np.array([_spread(row)[0] for row in rows])
 
 
 def _over_the_one_before(values: Array) -> Array:

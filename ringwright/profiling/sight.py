@@ -90,12 +90,8 @@ def carriers(found: Fringes, view: View, light: Sequence[SampledLight], width: A
     answers = []
     for order in range(found.envelope.shape[0]):
         baseline = first_carried(found, order, view)
-        flux = np.array(
-            [
-                np.interp(place, found.baseline, found.envelope[order, row]) if place == place else math.nan
-                for row, place in enumerate(baseline)
-            ]
-        )
+        rows = zip(baseline, found.envelope[order], strict=True)
+        flux = np.array([np.interp(place, found.baseline, row) for place, row in rows])  # NaN stays NaN
         never = np.isnan(baseline).any()
         answers.append(
             Carrier(order, baseline, flux, _reason(found, order, light, resolved) if never else "")

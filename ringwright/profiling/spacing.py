@@ -15,10 +15,9 @@ from dataclasses import dataclass
 import numpy as np
 
 from raytrace.contract import Array
-from ringwright.profiling.fringes import View, minima, seen
+from ringwright.profiling.fringes import PER_FRINGE, View, minima, seen
 from ringwright.sampling import SampledLight
 
-PER_FRINGE = 16
 # Decimals of a radian to which directions are told apart.
 SAME_DIRECTION = 12
 # The first minimum of a ring is not yet at its place; more than so many say nothing new.

@@ -39,7 +39,7 @@ def describe(profile: Profile) -> str:
 
 
 def _title(profile: Profile) -> str:
-    known = "" if profile.theta_g is None else f", 1 M = {math.degrees(profile.theta_g) * 3.6e9:.3g} µas"
+    known = "" if profile.theta_g is None else f", 1 M = {profile.theta_g_uas:.3g} µas"
     frequency = "" if profile.frequency is None else f" at {profile.frequency / 1e9:g} GHz"
     return f"{profile.name}{frequency}: {_flux(profile, profile.total_flux)} in all{known}; medians over position angle"
 
@@ -111,7 +111,7 @@ def _diameters(profile: Profile) -> list[str]:
         known = np.isfinite(spacing.diameter)
         if not known.any() or profile.theta_g is None:
             continue
-        values, scale = spacing.diameter[known], math.degrees(profile.theta_g) * 3.6e9
+        values, scale = spacing.diameter[known], profile.theta_g_uas
         lines.append(
             f"Diameter of order {spacing.order} by the spacing of its fringes ({spacing.first / 1e9:.3g} to "
             f"{spacing.last / 1e9:.3g} Gλ): {np.median(values):.5g} M = {np.median(values) * scale:.4g} µas, from "

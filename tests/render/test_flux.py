@@ -18,6 +18,7 @@ import raytrace as rt
 import ringwright as rw
 from ringwright.errors import InputError
 from ringwright.light import light_up
+from ringwright.sampling import accuracy_note
 
 # Flux per order, at any pixel size; neighbouring pixels agree on every side that they share, so that only the quadrature
 # around the field is left.
@@ -178,6 +179,17 @@ def test_the_accuracy_asked_for_and_reached_is_kept(write_scene, tmp_path):
     assert again.accuracy == 1e-8
     assert again.interpolation_error == pytest.approx(fine.interpolation_error)
     assert again.summary()["accuracy_asked"] == 1e-8
+
+
+def test_an_accuracy_that_is_not_reached_is_said_with_the_figure():
+    assert accuracy_note([1e-6, 2.9e-5], 1e-5) == ()
+    (note,) = accuracy_note([1e-6, 0.4], 1e-5)
+    assert note == "brightness is interpolated to 0.4 of its maximum, not to the 1e-05 asked for"
+
+
+def test_an_image_within_a_tenth_of_a_degree_of_edge_on_carries_that_note(write_scene):
+    image = rw.render(write_scene(inclination="89.98 deg", orders=1))
+    assert any("not to the 1e-05 asked for" in note for note in image.notes)
 
 
 def test_a_product_without_the_accuracy_still_opens(write_scene, tmp_path):
